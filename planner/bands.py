@@ -1,7 +1,7 @@
-"""Octave and one-third-octave bands: exact midbands (IEC 61260-1:2014) and nominal labels (ISO 266).
+"""Octave and one-third-octave bands: exact midbands (IEC 61260-1:2014), nominal labels (ISO 266).
 
-Band is always the last axis of an array. Unless a function says otherwise, that axis holds the eight
-octaves of `OCTAVES`.
+Band is always the last axis of an array. Unless a function says otherwise, that axis holds the
+eight octaves of `OCTAVES`.
 """
 
 from __future__ import annotations
@@ -49,7 +49,7 @@ def exact_midband(nominal: ArrayLike, *, fraction: int = 1) -> NDArray[np.float6
 def band_edges(
     nominal: ArrayLike, *, fraction: int = 1
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Lower and upper edge frequencies, f_m · G^(∓1/(2·fraction)), same shape as `nominal`. [Hz]."""
+    """Lower and upper edge frequencies, f_m · G^(∓1/(2·fraction)), shape of `nominal`. [Hz]."""
     middle = exact_midband(nominal, fraction=fraction)
     half = OCTAVE_RATIO ** (0.5 / fraction)
     return middle / half, middle * half

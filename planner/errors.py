@@ -14,7 +14,8 @@
     └── MissingPartError (ImportError)  an optional library is not installed
 
 A message names the file, the place in it, what is wrong and what would be right. The front ends
-(``cli``, ``app``) each have one place that turns a `PlannerError` into words; nothing else catches it.
+(``cli``, ``app``) each have one place that turns a `PlannerError` into words; nothing else catches
+it.
 """
 
 from __future__ import annotations
