@@ -1,0 +1,45 @@
+"""Every chart of the app and of the paper; each comes with its message in words and its numbers.
+
+`Chart.vega_lite` gives the ready dictionary for a light or dark page, `Chart.table` the numbers,
+`Chart.description` the accessible sentence, `to_svg` a picture without any browser.
+"""
+
+from planner.report.chart import Chart, config, to_svg
+from planner.report.charts_bands import (
+    Series,
+    TargetSteps,
+    absorption,
+    formula_range,
+    measured_against_predicted,
+    reverberation,
+    target_sentence,
+)
+from planner.report.charts_choice import front, side_by_side
+from planner.report.charts_decay import DecayCurve, decay
+from planner.report.charts_modes import mode_count, mode_pressure, modes, response
+from planner.report.palette import DARK, LIGHT, STYLES, Theme
+
+__all__ = [
+    "DARK",
+    "LIGHT",
+    "STYLES",
+    "Chart",
+    "DecayCurve",
+    "Series",
+    "TargetSteps",
+    "Theme",
+    "absorption",
+    "config",
+    "decay",
+    "formula_range",
+    "front",
+    "measured_against_predicted",
+    "mode_count",
+    "mode_pressure",
+    "modes",
+    "response",
+    "reverberation",
+    "side_by_side",
+    "target_sentence",
+    "to_svg",
+]
