@@ -1,195 +1,168 @@
-"""One band: straight lines on the decay curve (ISO 3382), the whole-decay fit, and which to use.
-
-Sources: ISO 3382-1:2009 and ISO 3382-2:2008 for the ranges (EDT 0 to −10 dB, T20 −5 to −25 dB,
-T30 −5 to −35 dB, the range ending at least 10 dB above the noise), ISO 3382-2:2008 annex B for
-curvature and non-linearity.
-"""
+"""Interrupted noise, band by band: whole-decay fits, lines of the standard, and which to use."""
 
 from __future__ import annotations
 
+from collections import defaultdict
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.measure.decay import BandDecay, DecayCurve
+from planner.measure.figures import BandDecay, DecayCurve
 from planner.measure.filterbank import BandEnergies
-from planner.measure.whole_decay import DECAY_CONSTANT, WholeDecay, fit_whole_decay
+from planner.measure.lines import (
+    CURVED_PERCENT,
+    LADDER,
+    Line,
+    grouped,
+    line_between,
+    longest,
+    standard_lines,
+    times_of,
+)
+from planner.measure.whole_decay import WholeDecay, fit_whole_decay
 
 Array = NDArray[np.float64]
 
-RANGES: dict[str, tuple[float, float]] = {
-    "edt": (0.0, -10.0),
-    "t10": (-5.0, -15.0),
-    "t15": (-5.0, -20.0),
-    "t20": (-5.0, -25.0),
-    "t30": (-5.0, -35.0),
-}
-"""Evaluation ranges relative to the steady level. [dB]"""
-
-NOISE_MARGIN_DB = 10.0
-"""How far the lower end of a range stays above the noise. [dB]"""
-
-LEAST_RANGE_DB = 20.0
-"""Under this range above the noise even the whole-decay fit is refused. [dB]"""
+LEAST_RANGE_DB = 15.0
+"""Under this range above the noise even the whole-decay fit, which carries the noise in its model,
+is refused: less than the range of T10 would be seen. [dB]"""
 
 GUARD_S = 0.003
 """Skipped after the switch-off, whose place is known to 2 ms. [s]"""
 
 SETTLE = 5.0
-"""A band needs this over its width to ring down by more than 60 dB. [-]"""
+"""A filter has rung down by 60 dB after this over its width. [-]"""
+
+BEND_RATIO = 9.21
+"""Twice the log-likelihood gained by a second slope before it is believed: 99 % point of χ² with
+two degrees of freedom; single slopes exceed it about once in a hundred. [-]"""
+
+BEND_SIZE = 0.10
+"""Early and late times differ by more than this before a band is called bent. [-]"""
+
+LARGEST_U = 0.5
+"""Relative standard uncertainty above which a time says nothing. [-]"""
+
+FEW_DECAYS_U = 0.10
+"""Relative standard uncertainty above which more decays are asked for. [-]"""
+
+LINE_SCATTER = {"t30": 0.55 * 1.52**0.5, "t20": 0.88 * 1.90**0.5, "t15": 1.36 * 1.90**0.5}
+"""Relative standard deviation of a line is this over sqrt(n·B·T): the part of ISO 3382-2:2008,
+annex A, that more decays reduce; T15 scaled from T20 by the range to the power 3/2. [-]"""
 
 
 @dataclass(frozen=True, slots=True)
-class Line:
-    """A straight line through levels."""
+class Fits:
+    """The whole-decay fits of one band, and the frames they used."""
 
-    time_s: float
-    """Extrapolated to 60 dB. [s]"""
-    start_s: float
-    start_db: float
-    end_s: float
-    end_db: float
-    nonlinearity: float
-    """ξ. [‰]"""
+    time: Array
+    energy: Array
+    one: WholeDecay
+    two: WholeDecay
 
 
-def straight_line(time: Array, level: Array) -> Line | None:
-    """Least-squares line through `level` [dB] over `time` [s]; None unless it falls."""
-    if len(time) < 3:
-        return None
-    middle = time.mean()
-    spread = time - middle
-    slope = float(spread @ level / (spread @ spread))
-    if slope >= 0:
-        return None
-    top = float(level.mean()) - slope * middle
-    residual = level - (top + slope * time)
-    variance = float(np.sum((level - level.mean()) ** 2))
-    start, end = float(time[0]), float(time[-1])
-    return Line(
-        time_s=-60.0 / slope,
-        start_s=start,
-        start_db=top + slope * start,
-        end_s=end,
-        end_db=top + slope * end,
-        nonlinearity=1000.0 * float(residual @ residual) / variance,
-    )
+def evaluate_bands(mean: BandEnergies, count: int) -> Iterator[BandDecay]:
+    """Figures of every band from the ensemble average of `count` bursts."""
+    fits = _fit_bands(mean, count)
+    for band in range(len(mean.bands)):
+        fit = fits.get(band)
+        if fit is None:
+            reason = "nothing but silence in this band before or after the switch-off"
+            yield refused(mean.bands.nominal[band], reason)
+        else:
+            yield _evaluate(mean, band, count, fit)
 
 
-def has_range(name: str, range_db: float) -> bool:
-    """Whether the range of an evaluation ends far enough above the noise."""
-    return range_db >= -RANGES[name][1] + NOISE_MARGIN_DB
-
-
-def standard_lines(
-    time: Array, level: Array, located: Array, range_db: float
-) -> dict[str, Line | None]:
-    """The evaluations of ISO 3382 that the range allows.
-
-    Parameters
-    ----------
-    time, level
-        The decay curve relative to the steady level, shape ``(point,)``. [s], [dB]
-    located
-        A smooth curve that says where the levels are reached, shape ``(point,)``. [dB]
-    range_db
-        Steady level above the noise. [dB]
-    """
-    lines: dict[str, Line | None] = {}
-    for name, (top, bottom) in RANGES.items():
-        lines[name] = None
-        if has_range(name, range_db) and np.any(located <= bottom):
-            last = int(np.argmax(located <= bottom))
-            first = int(np.argmax(located <= top)) if top < 0 else 0
-            lines[name] = straight_line(time[first : last + 1], level[first : last + 1])
-    return lines
-
-
-def grouped(energy: Array, count: int) -> Array:
-    """Mean over every `count` frames, the last incomplete group left out."""
-    whole = len(energy) // count
-    means: Array = energy[: whole * count].reshape(whole, count, *energy.shape[1:]).mean(axis=1)
-    return means
-
-
-def evaluate_band(mean: BandEnergies, band: int, count: int) -> BandDecay:
-    """Figures of one band from the ensemble average of `count` bursts."""
-    nominal = mean.bands.nominal[band]
-    width = float(mean.bands.width[band])
-    energy = mean.energy[:, band]
-    steady = _steady(mean.times, energy, width)
-    decaying = (mean.times > GUARD_S) & (mean.times < mean.times[-1] - SETTLE / width)
-    time, data = mean.times[decaying], energy[decaying]
-    if steady <= 0 or len(data) < 20 or np.count_nonzero(data) < 20:
-        return refused(nominal, "nothing but silence in this band or after the switch-off")
-    degrees = count * float(mean.bands.statistical_width[band]) * mean.frame_s
-    one, two = _fits(data, time, degrees)
-    return _band_decay(nominal, width, mean, time, data, steady, one, two, count)
-
-
-def refused(nominal: float, reason: str, range_db: float = float("nan")) -> BandDecay:
-    """A band without a figure."""
+def refused(nominal: float, reason: str, **known: float) -> BandDecay:
+    """A band without a value to use; what is `known` nevertheless is kept."""
     nan = float("nan")
     empty = np.zeros(0)
-    return BandDecay(
-        nominal, nan, nan, nan, nan, nan, range_db, nan, nan, nan, nan, nan, nan, None, "", reason,
-        nan, nan, (nan, nan), ("refused",), DecayCurve(empty, empty, empty, ()),
+    figures = dict.fromkeys(
+        ("edt_s", "t10_s", "t15_s", "t20_s", "t30_s", "range_db", "level_db", "floor_db",
+         "curvature_percent", "nonlinearity_permille", "whole_s", "whole_u_s", "t_s", "u_s"),
+        nan,
     )  # fmt: skip
-
-
-def evaluate_integrated(
-    energies: BandEnergies,
-    band: int,
-    time: Array,
-    level: Array,
-    total: float,
-    noise: float,
-    late_s: float,
-) -> BandDecay:
-    """Figures of one band from a backward-integrated decay.
-
-    Parameters
-    ----------
-    energies, band
-        What was integrated.
-    time, level
-        The integrated decay, NaN where there is none, shape ``(frame,)``. [s], [dB]
-    total
-        Energy of the whole decay. [squared pressure × s]
-    noise
-        Mean squared pressure of the noise.
-    late_s
-        Reverberation time of the late decay. [s]
-    """
-    nominal = energies.bands.nominal[band]
-    width = float(energies.bands.width[band])
-    # Interrupted noise in the same room and noise would show this range: the energy of the whole
-    # decay against that of the noise over one decay constant.
-    noise_part = max(noise * late_s / DECAY_CONSTANT, total * 1e-12)
-    range_db = float(10.0 * np.log10(total / noise_part))
-    good = np.isfinite(level)
-    time, level = time[good], level[good]
-    lines = standard_lines(time, level, level, range_db)
-    times = {name: line.time_s if line else float("nan") for name, line in lines.items()}
-    used = next((name for name in ("t30", "t20", "t15") if lines[name]), "")
-    if not used:
-        return refused(nominal, _short(range_db, "T15 needs 30 dB", 30.0), range_db)
-    line = lines[used]
-    assert line is not None
-    t_s = line.time_s
-    relative = 0.5 * np.sqrt(1.0 / (width * t_s))
-    flags = list(_flags(t_s, width, range_db, None, relative, energies.reverse))
-    curvature = 100.0 * (times["t30"] / times["t20"] - 1.0)
-    if abs(curvature) > 10.0 or line.nonlinearity > 10.0:
-        flags.append("curved")
-    size = -(-len(time) // 400)
-    curve = DecayCurve(
-        grouped(time, size),
-        grouped(level, size),
-        np.full(len(time) // size, np.nan),
-        _drawn(lines),
+    return BandDecay(
+        band_hz=nominal,
+        two_slopes_s=None,
+        used="",
+        reason=reason,
+        interval_s=(nan, nan),
+        flags=("refused",),
+        curve=DecayCurve(empty, empty, empty, ()),
+        **(figures | known),
     )
+
+
+def short_range(range_db: float, name: str, needed: float) -> str:
+    """The reason in dB, and what to change on site."""
+    return (
+        f"range {range_db:.0f} dB above the noise, {name} needs {needed:.0f} dB: "
+        f"{needed - range_db:.0f} dB louder, or the room quieter by as much"
+    )
+
+
+def _fit_bands(mean: BandEnergies, count: int) -> dict[int, Fits]:
+    """Whole-decay fits; bands that need the same frames are fitted in one go."""
+    windows = defaultdict(list)
+    for band, width in enumerate(mean.bands.width):
+        last = mean.times[-1] - SETTLE / width
+        inside = np.flatnonzero((mean.times > GUARD_S) & (mean.times < last))
+        if len(inside) >= 40 and np.count_nonzero(mean.energy[inside, band]) >= 40:
+            windows[(int(inside[0]), int(inside[-1]) + 1)].append(band)
+    fits: dict[int, Fits] = {}
+    for (first, last), members in windows.items():
+        fits |= _fit_window(mean, count, slice(first, last), np.array(members))
+    return fits
+
+
+def _fit_window(
+    mean: BandEnergies, count: int, window: slice, members: NDArray[np.intp]
+) -> dict[int, Fits]:
+    time, energy = mean.times[window], mean.energy[window][:, members]
+    degrees = count * mean.bands.statistical_width[members] * mean.frame_s
+    coarse = max(len(time) // 300, 1)
+    rough = fit_whole_decay(grouped(energy, coarse), grouped(time, coarse), degrees * coarse)
+    wanted = rough.time_s[0] / 30.0 / mean.frame_s
+    sizes = np.clip(wanted, 1, max(len(time) // 40, 1)).astype(int)
+    fits = {}
+    for size in np.unique(sizes):
+        chosen = np.flatnonzero(sizes == size)
+        at, part = grouped(time, size), grouped(energy[:, chosen], size)
+        one = fit_whole_decay(part, at, degrees[chosen] * size)
+        two = fit_whole_decay(part, at, degrees[chosen] * size, slopes=2)
+        for place, index in enumerate(chosen):
+            fits[int(members[index])] = Fits(
+                time, energy[:, index], one.decay(place), two.decay(place)
+            )
+    return fits
+
+
+def _evaluate(mean: BandEnergies, band: int, count: int, fit: Fits) -> BandDecay:
+    nominal, width = mean.bands.nominal[band], float(mean.bands.width[band])
+    steady = _steady(mean.times, mean.energy[:, band], width)
+    bend = bend_of(fit, steady)
+    bent = bend > BEND_SIZE
+    best = fit.two if bent else fit.one
+    floor = max(float(best.floor), steady * 1e-12)
+    range_db = float(10.0 * np.log10(steady / floor))
+    whole, relative = float(fit.one.time_s[0]), float(fit.one.relative_u[0])
+    lines = _lines(mean, fit, best, steady, range_db)
+    times = times_of(lines)
+    used, reason = choose(lines, range_db, relative, fit.two if bent else None, count)
+    t_s, relative = value_to_use(used, times, whole, relative, bend, count * width)
+    shown = longest(lines)
+    line = lines[shown] if shown else None
+    flags = [word for word, doubt in (
+        ("refused", not used),
+        ("bent", bent),
+        ("curved", not bent and _curved(times, count * width)),
+        ("short-range", range_db < 35.0),
+        ("limited-by-filter", width * t_s < (4.0 if mean.reverse else 16.0)),
+        ("few-decays", bool(used) and relative > FEW_DECAYS_U),
+    ) if doubt]  # fmt: skip
     return BandDecay(
         band_hz=nominal,
         edt_s=times["edt"],
@@ -198,35 +171,20 @@ def evaluate_integrated(
         t20_s=times["t20"],
         t30_s=times["t30"],
         range_db=range_db,
-        level_db=float(10.0 * np.log10(total)),
-        floor_db=float(10.0 * np.log10(noise_part)),
-        curvature_percent=curvature,
-        nonlinearity_permille=line.nonlinearity,
-        whole_s=float("nan"),
-        whole_u_s=float("nan"),
-        two_slopes_s=None,
+        level_db=float(10.0 * np.log10(steady)),
+        floor_db=float(10.0 * np.log10(floor)),
+        curvature_percent=100.0 * (times["t30"] / times["t20"] - 1.0),
+        nonlinearity_permille=line.nonlinearity if line else float("nan"),
+        whole_s=whole,
+        whole_u_s=whole * float(fit.one.relative_u[0]),
+        two_slopes_s=(float(fit.two.time_s[0]), float(fit.two.time_s[1])) if bent else None,
         used=used,
-        reason=f"the longest range that stays {NOISE_MARGIN_DB:.0f} dB above the noise",
+        reason=reason,
         t_s=t_s,
         u_s=t_s * relative,
         interval_s=(t_s * np.exp(-1.96 * relative), t_s * np.exp(1.96 * relative)),
         flags=tuple(flags),
-        curve=curve,
-    )
-
-
-def _short(range_db: float, needs: str, needed: float) -> str:
-    return (
-        f"range {range_db:.0f} dB, {needs}: play {needed - range_db:.0f} dB louder or make the "
-        f"room quieter by as much"
-    )
-
-
-def _drawn(lines: dict[str, Line | None]) -> tuple[tuple[str, float, float, float, float], ...]:
-    return tuple(
-        (name, line.start_s, line.start_db, line.end_s, line.end_db)
-        for name, line in lines.items()
-        if line
+        curve=_curve(mean, band, steady, best, lines),
     )
 
 
@@ -234,134 +192,132 @@ def _steady(times: Array, energy: Array, width: float) -> float:
     """Mean squared pressure before the switch-off, clear of what the filter smears."""
     before = times < -0.5 * SETTLE / width
     if np.count_nonzero(before) < 10:
-        before = times < 0
-    return float(energy[before].mean())
+        before = times < 0.0
+    return float(max(energy[before].mean(), 1e-300))
 
 
-def _fits(data: Array, time: Array, degrees: float) -> tuple[WholeDecay, WholeDecay | None]:
-    """One exponential, and two where the likelihood clearly asks for them."""
-    coarse = max(len(data) // 400, 1)
-    fit = fit_whole_decay(grouped(data, coarse), grouped(time, coarse), degrees * coarse)
-    step = float(time[1] - time[0])
-    size = int(np.clip(float(fit.time_s[0]) / 30.0 / step, 1, max(len(data) // 40, 1)))
-    part, at = grouped(data, size), grouped(time, size)
-    one = fit_whole_decay(part, at, degrees * size)
-    two = fit_whole_decay(part, at, degrees * size, slopes=2)
-    return one, two if is_bent(one, two) else None
+def bend_of(fit: Fits, steady: float) -> float:
+    """How much longer the late decay takes than the early one; 0 when the data do not say so.
+
+    Early is −5 to −15 dB, late −15 dB to 5 dB above the noise, both on the curve of two
+    exponentials without noise. [-]
+    """
+    if float(fit.one.deviance - fit.two.deviance) <= BEND_RATIO:
+        return 0.0
+    time = np.linspace(0.0, float(fit.time[-1]), 400)
+    curve = 10.0 * np.log10((fit.two.mean(time) - fit.two.floor) / steady + 1e-30)
+    bottom = 10.0 * np.log10(float(fit.two.floor) / steady) + 5.0
+    early = line_between(time, curve, curve, -5.0, -15.0)
+    late = line_between(time, curve, curve, -15.0, min(bottom, -25.0))
+    if early is None or late is None:
+        return float(fit.two.time_s[1] / fit.two.time_s[0] - 1.0)
+    return max(late.time_s, float(fit.one.time_s[0])) / early.time_s - 1.0
 
 
-def is_bent(one: WholeDecay, two: WholeDecay) -> bool:
-    """Whether two exponentials are needed: likelihood ratio, and a bend that matters."""
-    ratio = float(one.deviance - two.deviance)
-    apart = float(two.time_s[1] / two.time_s[0])
-    return ratio > 12.0 and apart > 1.3
+def _lines(
+    mean: BandEnergies, fit: Fits, best: WholeDecay, steady: float, range_db: float
+) -> dict[str, Line | None]:
+    """Lines on the averaged levels, between the times at which the fitted curve has the levels.
+
+    Fluctuations then do not decide where a range begins and ends. Levels are means over a
+    thirtieth of the reverberation time (a detector may take a twelfth of it).
+    """
+    size = max(int(float(fit.one.time_s[0]) / 30.0 / mean.frame_s), 1)
+    size = min(size, max(len(fit.time) // 20, 1))
+    at = grouped(fit.time, size)
+    level = 10.0 * np.log10(np.maximum(grouped(fit.energy, size), 1e-300) / steady)
+    return standard_lines(at, level, 10.0 * np.log10(best.mean(at) / steady), range_db)
 
 
-def _band_decay(
-    nominal: float,
-    width: float,
-    mean: BandEnergies,
-    time: Array,
-    data: Array,
-    steady: float,
-    one: WholeDecay,
-    two: WholeDecay | None,
-    count: int,
-) -> BandDecay:
-    best = two or one
-    floor = max(float(best.floor), steady * 1e-12)
-    range_db = 10.0 * np.log10(steady / floor)
-    estimate = float(one.time_s[0])
-    size = max(int(estimate / 30.0 / mean.frame_s), 1)
-    at = grouped(time, size)
-    level = 10.0 * np.log10(np.maximum(grouped(data, size), 1e-300) / steady)
-    located = 10.0 * np.log10(best.mean(at) / steady)
-    lines = standard_lines(at, level, located, range_db)
-    times = {name: line.time_s if line else float("nan") for name, line in lines.items()}
-    chosen = lines["t30"] or lines["t20"] or lines["t15"]
-    used, t_s, relative, reason = _choose(one, two, times, range_db)
-    curve_at = mean.times > -0.2
-    curve = _curve(
-        mean.times[curve_at],
-        mean.energy[curve_at, nominal_index(mean, nominal)],
-        steady,
-        best,
-        lines,
-    )
-    return BandDecay(
-        band_hz=nominal,
-        edt_s=times["edt"],
-        t10_s=times["t10"],
-        t15_s=times["t15"],
-        t20_s=times["t20"],
-        t30_s=times["t30"],
-        range_db=float(range_db),
-        level_db=float(10.0 * np.log10(steady)),
-        floor_db=float(10.0 * np.log10(floor)),
-        curvature_percent=100.0 * (times["t30"] / times["t20"] - 1.0),
-        nonlinearity_permille=chosen.nonlinearity if chosen else float("nan"),
-        whole_s=estimate,
-        whole_u_s=estimate * float(one.relative_u[0]),
-        two_slopes_s=(float(two.time_s[0]), float(two.time_s[1])) if two else None,
-        used=used,
-        reason=reason,
-        t_s=t_s,
-        u_s=t_s * relative,
-        interval_s=(t_s * np.exp(-1.96 * relative), t_s * np.exp(1.96 * relative)),
-        flags=_flags(t_s, width, range_db, two, relative, mean.reverse),
-        curve=curve,
-    )
-
-
-def nominal_index(mean: BandEnergies, nominal: float) -> int:
-    """Where a band stands."""
-    return mean.bands.nominal.index(nominal)
-
-
-def _choose(
-    one: WholeDecay, two: WholeDecay | None, times: dict[str, float], range_db: float
-) -> tuple[str, float, float, str]:
-    """Evaluation, time, relative standard uncertainty and the reason in words."""
-    relative = float(one.relative_u[0])
-    nan = float("nan")
-    if range_db < LEAST_RANGE_DB:
-        return "", nan, nan, _short(range_db, "T20 needs 35 dB", 35.0)
-    if two is not None:
-        for name in ("t30", "t20", "t15"):
-            if np.isfinite(times[name]):
-                return name, times[name], relative, "the decay is bent: line as in the standard"
-    if not relative < 0.5:
-        return "", nan, nan, "too few independent samples: record more decays"
-    return "whole-decay", float(one.time_s[0]), relative, "straight decay: every frame used"
-
-
-def _flags(
-    t_s: float,
-    width: float,
+def choose(
+    lines: dict[str, Line | None],
     range_db: float,
-    two: WholeDecay | None,
     relative: float,
-    reverse: bool,
-) -> tuple[str, ...]:
-    words = []
-    if not np.isfinite(t_s):
-        words.append("refused")
-    if two is not None:
-        words.append("bent")
-    if range_db < 35.0:
-        words.append("short-range")
-    if width * t_s < (4.0 if reverse else 16.0):
-        words.append("limited-by-filter")
-    if relative > 0.1:
-        words.append("few-decays")
-    return tuple(words)
+    slopes: WholeDecay | None,
+    count: int,
+) -> tuple[str, str]:
+    """Which evaluation is to be used, and the reason in words.
+
+    Parameters
+    ----------
+    lines
+        The evaluations of the standard.
+    range_db
+        Steady level above the noise. [dB]
+    relative
+        Relative standard uncertainty of the whole-decay fit. [-]
+    slopes
+        Two exponentials where the decay is bent.
+    count
+        Bursts averaged.
+    """
+    if range_db < LEAST_RANGE_DB:
+        return "", short_range(range_db, "T20", 35.0)
+    if relative > LARGEST_U:
+        more = max(int(np.ceil(count * (relative / 0.25) ** 2)) - count, 1)
+        return "", (
+            f"too few independent samples in so short a decay: standard uncertainty "
+            f"{100 * relative:.0f} %, {more} more decays would make it 25 %"
+        )
+    if slopes is not None:
+        name = longest(lines)
+        line = lines[name] if name else None
+        if line is None:
+            return "", "the decay is bent, and " + short_range(range_db, "T15", 30.0)
+        if 0.8 * slopes.time_s[0] < line.time_s < 1.25 * slopes.time_s[1]:
+            return name, f"the decay is bent: {name.upper()} as the standard defines it"
+        return (
+            "whole-decay",
+            "the decay seems bent, but too few decays fluctuate too much for a line",
+        )
+    reason = "straight decay: every frame counts, the noise floor is part of the fit"
+    if relative > FEW_DECAYS_U:
+        more = int(np.ceil(count * (relative / FEW_DECAYS_U) ** 2)) - count
+        reason += f"; {more} more decays bring the standard uncertainty under 10 %"
+    return "whole-decay", reason
+
+
+def value_to_use(
+    used: str, times: dict[str, float], whole: float, relative: float, bend: float, samples: float
+) -> tuple[float, float]:
+    """The time [s] and its relative standard uncertainty; `samples` is n·B. [1/s]."""
+    if not used:
+        return float("nan"), float("nan")
+    if used == "whole-decay":
+        # The likelihood is even in ln T: the mean of T itself is longer by a known amount.
+        return whole / (1.0 + relative**2), float(np.hypot(relative, bend / np.sqrt(12.0)))
+    t_s = times[used]
+    others = [times[name] for name in LADDER if np.isfinite(times[name])]
+    spread = (max(others) - min(others)) / t_s / np.sqrt(12.0)
+    return t_s, float(np.hypot(LINE_SCATTER[used] / np.sqrt(samples * t_s), spread))
+
+
+def _curved(times: dict[str, float], samples: float) -> bool:
+    """T20 and T30 apart by more than a tenth, and by more than chance."""
+    t20, t30 = times["t20"], times["t30"]
+    if not (np.isfinite(t20) and np.isfinite(t30)):
+        return False
+    chance = 300.0 * LINE_SCATTER["t20"] / np.sqrt(samples * t30)
+    return bool(abs(100.0 * (t30 / t20 - 1.0)) > max(CURVED_PERCENT, chance))
 
 
 def _curve(
-    time: Array, energy: Array, steady: float, fit: WholeDecay, lines: dict[str, Line | None]
+    mean: BandEnergies, band: int, steady: float, fit: WholeDecay, lines: dict[str, Line | None]
 ) -> DecayCurve:
-    size = -(-len(time) // 400)
-    at = grouped(time, size)
-    fitted = np.where(at > 0, 10.0 * np.log10(fit.mean(at) / steady), np.nan)
-    level = 10.0 * np.log10(np.maximum(grouped(energy, size), 1e-300) / steady)
-    return DecayCurve(at, level, fitted, _drawn(lines))
+    shown = mean.times > -0.3
+    size = -(-int(np.count_nonzero(shown)) // 400)
+    at = grouped(mean.times[shown], size)
+    energy = grouped(mean.energy[shown, band], size)
+    fitted = np.full(len(at), np.nan)
+    fitted[at > 0] = 10.0 * np.log10(fit.mean(at[at > 0]) / steady)
+    level = 10.0 * np.log10(np.maximum(energy, 1e-300) / steady)
+    return DecayCurve(at, level, fitted, drawn(lines))
+
+
+def drawn(lines: dict[str, Line | None]) -> tuple[tuple[str, float, float, float, float], ...]:
+    """The lines as a chart takes them."""
+    return tuple(
+        (name, line.start_s, line.start_db, line.end_s, line.end_db)
+        for name, line in lines.items()
+        if line
+    )

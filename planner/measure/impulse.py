@@ -17,22 +17,29 @@ References
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from planner.errors import RecordingError
-from planner.measure.decay import BandDecay, Decays
-from planner.measure.evaluation import (
-    SETTLE,
-    evaluate_integrated,
-    grouped,
-    refused,
-    straight_line,
-)
+from planner.measure.evaluation import LINE_SCATTER, SETTLE, drawn, refused, short_range
+from planner.measure.figures import BandDecay, DecayCurve, Decays
 from planner.measure.filterbank import OCTAVE_BANDS, BandEnergies, Bands, Samples, section_energies
+from planner.measure.lines import (
+    CURVED_PERCENT,
+    CURVED_PERMILLE,
+    LADDER,
+    NOISE_MARGIN_DB,
+    Line,
+    grouped,
+    longest,
+    standard_lines,
+    straight_line,
+    times_of,
+)
 from planner.measure.neighbours import with_neighbour_flags
+from planner.measure.whole_decay import DECAY_CONSTANT
 
 Array = NDArray[np.float64]
 
@@ -116,12 +123,86 @@ def _evaluate(energies: BandEnergies, band: int) -> BandDecay:
     kept = (energies.times > -settle) & (energies.times < energies.times[-1] - settle)
     time, energy = energies.times[kept], energies.energy[kept, band]
     if np.count_nonzero(time > 0) < 50 or np.count_nonzero(energy) < 50:
-        return refused(nominal, "the recording ends before the decay")
+        return refused(nominal, "the recording ends before the decay does")
     cut = truncation(time, energy)
     if cut is None:
         return refused(nominal, "the impulse does not stand out of the noise in this band")
     level, total = backward_integral(time, energy, cut)
-    return evaluate_integrated(energies, band, time, level, total, cut.noise, cut.late_s)
+    if total <= 0.0:
+        return refused(nominal, "the impulse does not stand out of the noise in this band")
+    good = np.isfinite(level)
+    return _figures(nominal, width, energies.reverse, time[good], level[good], total, cut)
+
+
+def _figures(
+    nominal: float,
+    width: float,
+    reverse: bool,
+    time: Array,
+    level: Array,
+    total: float,
+    cut: Truncation,
+) -> BandDecay:
+    # Interrupted noise in the same room would show this range: the energy of the whole decay
+    # against that of the noise over one decay constant.
+    noise = max(cut.noise * cut.late_s / DECAY_CONSTANT, total * 1e-12)
+    range_db = float(10.0 * np.log10(total / noise))
+    lines = standard_lines(time, level, level, range_db)
+    times = times_of(lines)
+    curvature = 100.0 * (times["t30"] / times["t20"] - 1.0)
+    used = longest(lines)
+    line = lines[used] if used else None
+    known = {f"{name}_s": value for name, value in times.items()} | {
+        "range_db": range_db,
+        "level_db": float(10.0 * np.log10(total)),
+        "floor_db": float(10.0 * np.log10(noise)),
+        "curvature_percent": curvature,
+        "nonlinearity_permille": line.nonlinearity if line else float("nan"),
+    }
+    curve = _curve(time, level, lines)
+    if line is None:
+        if range_db < 30.0:
+            reason = short_range(range_db, "T15", 30.0)
+        else:
+            reason = "the curve does not fall far enough before the noise"
+        return replace(refused(nominal, reason, **known), curve=curve)
+    t_s = line.time_s
+    relative = _relative_u(used, times, width)
+    return replace(
+        refused(nominal, "", **known),
+        used=used,
+        reason=f"the longest range that stays {NOISE_MARGIN_DB:.0f} dB above the noise",
+        t_s=t_s,
+        u_s=t_s * relative,
+        interval_s=(t_s * np.exp(-1.96 * relative), t_s * np.exp(1.96 * relative)),
+        flags=_flags(t_s * width, range_db, curvature, line, reverse),
+        curve=curve,
+    )
+
+
+def _relative_u(used: str, times: dict[str, float], width: float) -> float:
+    """An integrated response counts as ten decays (ISO 3382-2:2008, 7.2); and what ranges differ."""
+    t_s = times[used]
+    others = [times[name] for name in LADDER if np.isfinite(times[name])]
+    spread = (max(others) - min(others)) / t_s / np.sqrt(12.0)
+    return float(np.hypot(LINE_SCATTER[used] / np.sqrt(10.0 * width * t_s), spread))
+
+
+def _flags(
+    resolved: float, range_db: float, curvature: float, line: Line, reverse: bool
+) -> tuple[str, ...]:
+    doubts = (
+        ("curved", abs(curvature) > CURVED_PERCENT or line.nonlinearity > CURVED_PERMILLE),
+        ("short-range", range_db < 35.0),
+        ("limited-by-filter", resolved < (4.0 if reverse else 16.0)),
+    )
+    return tuple(word for word, doubt in doubts if doubt)
+
+
+def _curve(time: Array, level: Array, lines: dict[str, Line | None]) -> DecayCurve:
+    size = -(-len(time) // 400)
+    at = grouped(time, size)
+    return DecayCurve(at, grouped(level, size), np.full(len(at), np.nan), drawn(lines))
 
 
 def truncation(time: Array, energy: Array) -> Truncation | None:
@@ -172,7 +253,7 @@ def backward_integral(time: Array, energy: Array, cut: Truncation) -> tuple[Arra
     step = float(time[1] - time[0])
     inside = time + 0.5 * step <= cut.time_s
     net = np.where(inside, energy - cut.noise, 0.0) * step
-    rest = cut.level * cut.late_s / (6.0 * np.log(10.0))
+    rest = cut.level * cut.late_s / DECAY_CONSTANT
     running = np.cumsum(net[::-1])[::-1] - 0.5 * net + rest
     total = float(net.sum() + rest)
     level = np.full(len(time), np.nan)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
-from planner.measure.decay import Decays
+from planner.measure.figures import Decays
 
 LEAK_RATIO = 1.8
 """A band whose lower neighbour rings this many times longer is in doubt (common practice). [-]"""

@@ -46,6 +46,16 @@ class WholeDecay:
     deviance: Array
     """Twice the log-likelihood missing to a perfect fit, shape ``(...)``. [-]"""
 
+    def decay(self, index: int) -> WholeDecay:
+        """One of many decays, its fields without the last axis."""
+        return WholeDecay(
+            self.time_s[..., index],
+            self.amplitude[..., index],
+            self.floor[..., index],
+            self.relative_u[..., index],
+            self.deviance[..., index],
+        )
+
     def mean(self, time: ArrayLike) -> Array:
         """The fitted energy at `time` [s], shape ``(time, ...)``."""
         t = np.asarray(time, float).reshape(-1, *(1,) * self.floor.ndim)

@@ -81,7 +81,9 @@ def test_the_curve_is_thin_enough_to_draw_and_starts_before_the_stop():
     for band in decays.each:
         assert len(band.curve.time_s) <= 400
         assert band.curve.time_s[0] < 0.0
-        assert band.curve.level_db[band.curve.time_s < -0.1].mean() == pytest.approx(0.0, abs=2.5)
+        steady = 10.0 ** (band.curve.level_db[band.curve.time_s < -0.1] / 10.0)
+        # 0.2 s of a band 44 Hz wide hold eleven independent samples: 30 % scatter
+        assert steady.mean() == pytest.approx(1.0, abs=0.7)
         assert {line[0] for line in band.curve.lines} >= {"t20", "t30"}
 
 

@@ -1,0 +1,92 @@
+"""What an evaluated decay says: one band, one position."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.measure.filterbank import Bands
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True)
+class DecayCurve:
+    """What a chart draws: the decay, thinned to at most 400 points, and the fitted lines."""
+
+    time_s: Array
+    """From the switch-off or the onset, shape ``(point,)``. [s]"""
+    level_db: Array
+    """Relative to the steady level, or to the whole energy of an impulse, ``(point,)``. [dB]"""
+    fitted_db: Array
+    """The whole-decay fit (NaN where there is none), shape ``(point,)``. [dB]"""
+    lines: tuple[tuple[str, float, float, float, float], ...]
+    """Per evaluation: name, start [s], start level [dB], end [s], end level [dB]."""
+
+
+@dataclass(frozen=True, slots=True)
+class BandDecay:
+    """The decay of one band at one position. A figure that cannot be had is NaN."""
+
+    band_hz: float
+    """Nominal midband frequency. [Hz]"""
+    edt_s: float
+    """Early decay time, from 0 to −10 dB. [s]"""
+    t10_s: float
+    """From −5 to −15 dB. [s]"""
+    t15_s: float
+    """From −5 to −20 dB. [s]"""
+    t20_s: float
+    """From −5 to −25 dB. [s]"""
+    t30_s: float
+    """From −5 to −35 dB. [s]"""
+    range_db: float
+    """Steady level (for an impulse: what noise would have had) above the noise floor. [dB]"""
+    level_db: float
+    """Steady level before the switch-off, relative to a squared pressure of 1. [dB]"""
+    floor_db: float
+    """Noise floor relative to a squared pressure of 1. [dB]"""
+    curvature_percent: float
+    """C = 100 (T30/T20 − 1), ISO 3382-2:2008, B.3. [%]"""
+    nonlinearity_permille: float
+    """ξ = 1000 (1 − r²) over the longest range there is, ISO 3382-2:2008, B.2. [‰]"""
+    whole_s: float
+    """Whole-decay fit of one exponential; NaN for an impulse. [s]"""
+    whole_u_s: float
+    """Its standard uncertainty. [s]"""
+    two_slopes_s: tuple[float, float] | None
+    """Both times where two exponentials are clearly better than one. [s]"""
+    used: str
+    """``whole-decay``, ``t30``, ``t20``, ``t15``, or empty where the band is refused."""
+    reason: str
+    """Why this one, or why none and what to change, in words."""
+    t_s: float
+    """The value to use; NaN when refused. [s]"""
+    u_s: float
+    """Its standard uncertainty as the decay time at this very position. [s]
+
+    How the time differs from position to position is not in it: see `survey`.
+    """
+    interval_s: tuple[float, float]
+    """95 % interval of the same. [s]"""
+    flags: tuple[str, ...]
+    """Doubts, a word each: ``refused``, ``bent``, ``curved``, ``short-range``, ``few-decays``,
+    ``limited-by-filter``, ``neighbour-leak``."""
+    curve: DecayCurve
+
+
+@dataclass(frozen=True, slots=True)
+class Decays:
+    """All bands of one position."""
+
+    bands: Bands
+    each: tuple[BandDecay, ...]
+    """One per band."""
+    count: int
+    """Bursts in the ensemble. [-]"""
+
+    def column(self, field: str) -> Array:
+        """One number of every band, shape ``(band,)``: ``decays.column("t_s")``."""
+        return np.array([getattr(band, field) for band in self.each], float)
