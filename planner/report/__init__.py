@@ -4,4 +4,4 @@ Charts are Vega-Lite dictionaries shared by the browser app and the paper, drawi
 lists and reports are PDF, HTML, spreadsheets or plain text.
 """
 
-__all__ = ["charts"]
+__all__ = ["charts", "drawings", "dxf"]
