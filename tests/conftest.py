@@ -4,6 +4,11 @@ import os
 from pathlib import Path
 
 import pytest
+from hypothesis import settings
+
+# The first call of a test may import a heavy library; a deadline would time that.
+settings.register_profile("planner", deadline=None, derandomize=True)
+settings.load_profile("planner")
 
 RECORDINGS = Path(__file__).resolve().parents[2] / "shared" / "reference" / "recordings"
 
