@@ -1,0 +1,109 @@
+"""How likely a treatment meets its target, given what nobody knows exactly.
+
+The room is drawn as `planner.predict.uncertainty.draw` does for a prediction: coefficients of the
+room (or, after a calibration, its posterior), of the products, dimensions and air. A draw meets the
+target when every judged band lies inside it by every formula that must meet it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.air import Air, speed_of_sound
+from planner.bands import OCTAVES
+from planner.errors import OptionError
+from planner.predict.formulas import reverberation_time
+from planner.predict.targets import TargetLimits
+from planner.predict.uncertainty import draw
+from planner.room.surfaces import RoomSurfaces
+from planner.treat.windows import air_m, area_for, effective_volume
+
+Array = NDArray[np.float64]
+
+STEERING_DRAWS = 4000
+"""Draws that a search for a confidence is judged by: sampling error 0.8 % at most."""
+
+
+def time_draws(
+    surfaces: RoomSurfaces,
+    air: Air,
+    names: Sequence[str],
+    *,
+    count: int,
+    seed: int,
+    room_draws: Array | None = None,
+) -> dict[str, Array]:
+    """Reverberation times of a treated room, drawn from what is not known of it.
+
+    Parameters
+    ----------
+    surfaces, air
+        The room, treated; state of the air.
+    names
+        Formulas.
+    count, seed
+        How many draws; same seed, same draws.
+    room_draws
+        Draws of the untreated room's coefficients, shape ``(draw, part, band)``, from a
+        calibration; those parts come first in `surfaces`. Products are still drawn from their own
+        uncertainty. [-]
+
+    Returns
+    -------
+    times
+        By formula, shape ``(draw, band)``. [s]
+
+    Raises
+    ------
+    OptionError
+        `room_draws` does not fit the room.
+    """
+    room = draw(surfaces, air, count, seed).room
+    if room_draws is not None:
+        given = _fitting(np.asarray(room_draws, float), surfaces)
+        alpha = room.alpha.copy()
+        rows = np.random.default_rng(seed + 7919).integers(len(given), size=count)
+        alpha[:, : given.shape[1]] = given[rows]
+        room = replace(room, alpha=alpha)
+    return {name: reverberation_time(name, room) for name in names}
+
+
+def _fitting(draws: Array, surfaces: RoomSurfaces) -> Array:
+    untreated = sum(part.kind != "panel" for part in surfaces.parts)
+    if draws.ndim != 3 or draws.shape[1:] != (untreated, len(OCTAVES)) or len(draws) < 1:
+        raise OptionError(
+            f"draws of shape {draws.shape} do not fit a room of {untreated} parts",
+            cure=f"Give an array (draw, {untreated}, {len(OCTAVES)}).",
+        )
+    return draws
+
+
+def meets(
+    times: dict[str, Array], target: TargetLimits, judged: NDArray[np.bool_]
+) -> NDArray[np.bool_]:
+    """Which draws lie inside the target, shape ``(draw, band)``; bands not judged always do."""
+    low = np.where(judged & np.isfinite(target.low), target.low, 0.0)
+    high = np.where(judged & np.isfinite(target.high), target.high, np.inf)
+    inside = [(drawn >= low) & (drawn <= high) for drawn in times.values()]
+    result: NDArray[np.bool_] = np.all(inside, axis=0)
+    return result
+
+
+def area_spread(
+    surfaces: RoomSurfaces, air: Air, times: dict[str, Array]
+) -> dict[str, tuple[Array, Array]]:
+    """Mean and standard deviation of the absorption area that would give the drawn times.
+
+    By formula, shape ``(band,)`` each, in the room of nominal size and air. [m²]
+    """
+    volume, surface = effective_volume(surfaces), float(surfaces.area.sum())
+    speed, air_area = float(speed_of_sound(air.temperature_c)), 4.0 * air_m(air) * volume
+    spread = {}
+    for name, drawn in times.items():
+        areas = area_for(name, drawn, volume, surface, air_area, speed)
+        spread[name] = (areas.mean(axis=0), areas.std(axis=0))
+    return spread
