@@ -11,14 +11,14 @@ from numpy.typing import NDArray
 from planner.bands import OCTAVES
 from planner.reconcile.doubts import climate_doubt, state_doubt, unit_slip
 from planner.reconcile.octaves import octave_times
-from planner.reconcile.words import listed_bands
+from planner.reconcile.words import json_list, listed_bands
 
 if TYPE_CHECKING:
     from planner.absorption.library import Library
     from planner.air import Air
     from planner.measure.measured import Measured
     from planner.predict.prediction import Prediction
-    from planner.reconcile.calibrate import Calibration
+    from planner.reconcile.calibration import Calibration
     from planner.room.model import Room
 
 RANGE_FORMULAS = ("sabine", "eyring")
@@ -84,15 +84,15 @@ class Comparison:
         content: dict[str, Any] = {
             "bands_hz": list(self.bands_hz),
             "formula": self.formula,
-            "predicted": _listed(self.predicted),
-            "predicted_u_s": _listed(self.predicted_u),
-            "predicted_by": {name: _listed(value) for name, value in self.predicted_by.items()},
-            "predicted_range": {"low": _listed(low), "high": _listed(high)},
-            "measured": _listed(self.measured),
-            "measured_u_s": _listed(self.measured_u),
-            "difference_s": _listed(self.difference_s),
-            "difference_percent": _listed(self.difference_percent),
-            "z": _listed(self.z),
+            "predicted": json_list(self.predicted),
+            "predicted_u_s": json_list(self.predicted_u),
+            "predicted_by": {name: json_list(value) for name, value in self.predicted_by.items()},
+            "predicted_range": {"low": json_list(low), "high": json_list(high)},
+            "measured": json_list(self.measured),
+            "measured_u_s": json_list(self.measured_u),
+            "difference_s": json_list(self.difference_s),
+            "difference_percent": json_list(self.difference_percent),
+            "z": json_list(self.z),
             "assumed_hz": list(self.assumed_hz),
             "words": list(self.words),
             "warnings": list(self.warnings),
@@ -105,10 +105,6 @@ class Comparison:
 
 def _finite(values: NDArray[np.float64]) -> NDArray[np.float64]:
     return np.where(np.isfinite(values), values, np.nan)
-
-
-def _listed(values: NDArray[np.float64]) -> list[float | None]:
-    return [float(value) if np.isfinite(value) else None for value in values]
 
 
 def compare(
@@ -173,12 +169,19 @@ def compare_room(
     A calibration that is refused (another state, a slip of the unit) becomes a warning here: the
     comparison is what shows why.
     """
+    from dataclasses import replace
+
     from planner.errors import MeasuredError
     from planner.predict.prediction import predict
     from planner.reconcile.calibrate import calibrate_room
     from planner.room.surfaces import room_surfaces
 
-    prediction = predict(room_surfaces(room, library), room.air_state(), methods=RANGE_FORMULAS)
+    prediction = predict(
+        room_surfaces(room, library),
+        room.air_state(),
+        methods=RANGE_FORMULAS,
+        formula="sabine" if room.treatment.formula == "sabine" else "eyring",
+    )
     calibration, refusal = None, []
     if calibrated:
         try:
@@ -193,8 +196,6 @@ def compare_room(
         air=room.air_state(),
         calibration=calibration,
     )
-    from dataclasses import replace
-
     return replace(comparison, warnings=(*comparison.warnings, *refusal))
 
 

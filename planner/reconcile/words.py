@@ -4,6 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
+import numpy as np
+from numpy.typing import ArrayLike
+
 from planner.bands import band_label
 
 
@@ -16,3 +19,8 @@ def and_list(words: Iterable[str]) -> str:
     """``a, b and c``."""
     items = list(words)
     return items[0] if len(items) == 1 else f"{', '.join(items[:-1])} and {items[-1]}"
+
+
+def json_list(values: ArrayLike) -> list[float | None]:
+    """Numbers over bands for JSON: None where there is none."""
+    return [float(value) if np.isfinite(value) else None for value in np.asarray(values, float)]
