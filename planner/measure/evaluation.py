@@ -39,8 +39,9 @@ BEND_RATIO = 9.21
 """Twice the log-likelihood gained by a second slope before it is believed: 99 % point of χ² with
 two degrees of freedom; single slopes exceed it about once in a hundred. [-]"""
 
-BEND_SIZE = 0.10
-"""Early and late times differ by more than this before a band is called bent. [-]"""
+BEND_SIZE = 0.05
+"""Early and late times differ by more than this before a band is called bent: up to 5 % of curvature
+is usual (ISO 3382-2:2008, B.3, from memory). [-]"""
 
 LARGEST_U = 0.5
 """Relative standard uncertainty above which a time says nothing. [-]"""
@@ -125,7 +126,7 @@ def _fit_window(
     degrees = count * mean.bands.statistical_width[members] * mean.frame_s
     coarse = max(len(time) // 300, 1)
     rough = fit_whole_decay(grouped(energy, coarse), grouped(time, coarse), degrees * coarse)
-    wanted = rough.time_s[0] / 30.0 / mean.frame_s
+    wanted = rough.time_s[0] / 40.0 / mean.frame_s
     sizes = np.clip(wanted, 1, max(len(time) // 40, 1)).astype(int)
     fits = {}
     for size in np.unique(sizes):
@@ -284,8 +285,9 @@ def value_to_use(
     if not used:
         return float("nan"), float("nan")
     if used == "whole-decay":
-        # The likelihood is even in ln T: the mean of T itself is longer by a known amount.
-        return whole / (1.0 + relative**2), float(np.hypot(relative, bend / np.sqrt(12.0)))
+        # The estimate is even in ln T, so its mean in T lies higher by half the variance.
+        corrected = whole / (1.0 + 0.5 * relative**2)
+        return corrected, float(np.hypot(relative, bend / np.sqrt(12.0)))
     t_s = times[used]
     others = [times[name] for name in LADDER if np.isfinite(times[name])]
     spread = (max(others) - min(others)) / t_s / np.sqrt(12.0)

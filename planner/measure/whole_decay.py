@@ -93,7 +93,7 @@ def fit_whole_decay(
     data = energy.reshape(len(energy), -1)
     weight = np.broadcast_to(np.asarray(degrees, float), shape).reshape(-1)
     scale = np.maximum(data.mean(axis=0), 1e-300)
-    data = np.maximum(data / scale, 1e-12)
+    data = np.maximum(data / scale, 1e-20)
     if start is None:
         theta = _start_one(data, times) if slopes == 1 else _start_two(data, times, weight)
     else:
