@@ -1,0 +1,124 @@
+"""Reading tables as people save them: commas or semicolons, decimal commas, odd encodings."""
+
+from __future__ import annotations
+
+import csv
+import io
+import re
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from planner.bands import OCTAVES
+from planner.errors import InputError
+
+LARGEST_FILE = 5_000_000
+"""A table beyond this is something else. [byte]"""
+
+_BAND = re.compile(r"a?\s*([\d.,]+)\s*(k?)\s*(?:hz)?", re.IGNORECASE)
+
+
+@dataclass(frozen=True, slots=True)
+class Row:
+    """One row of a table."""
+
+    cells: dict[str, str]
+    """By heading, stripped."""
+    line: int
+    """In the file, counted from 1."""
+    decimal_comma: bool
+
+    def text(self, column: str) -> str:
+        """Cell of that column; empty where the table has no such column."""
+        return self.cells.get(column, "")
+
+    def number(self, column: str) -> float | None:
+        """Number in that column, or None where the cell is empty.
+
+        Raises
+        ------
+        ValueError
+            The cell holds something else.
+        """
+        cell = self.text(column)
+        if not cell:
+            return None
+        return float(cell.replace(",", ".") if self.decimal_comma else cell)
+
+
+def decoded(raw: bytes) -> str:
+    """Text of a file saved as UTF-8, with or without a mark, or by an older spreadsheet."""
+    for encoding in ("utf-8-sig", "cp1252"):
+        try:
+            return raw.decode(encoding)
+        except UnicodeDecodeError:
+            continue
+    return raw.decode("latin-1")
+
+
+def rows_of(text: str) -> list[Row]:
+    """Rows of a table; lines that start with ``#`` are comments.
+
+    The delimiter is the one of ``;``, tab and ``,`` that the heading line holds most of; with
+    semicolons or tabs a comma inside a number is a decimal comma.
+    """
+    lines = text.splitlines()
+    start = next((n for n, line in enumerate(lines) if line.strip() and line[0] != "#"), None)
+    if start is None:
+        return []
+    delimiter = max(";\t,", key=lines[start].count)
+    reader = csv.reader(io.StringIO("\n".join(lines[start:])), delimiter=delimiter)
+    headings = [band_heading(cell) for cell in next(reader)]
+    found = []
+    for cells in reader:
+        if not any(cell.strip() for cell in cells) or cells[0].lstrip().startswith("#"):
+            continue
+        stripped = [cell.strip() for cell in cells]
+        row = dict(zip(headings, stripped, strict=False))
+        found.append(Row(row, start + reader.line_num, delimiter != ","))
+    return found
+
+
+def read_table(
+    path: Path, needed: Sequence[str], *, kind: type[InputError] = InputError
+) -> list[Row]:
+    """Rows of a file that must have certain columns.
+
+    Raises
+    ------
+    InputError
+        Of the `kind` given: the file cannot be read, or a column is missing.
+    """
+    try:
+        raw = path.read_bytes()
+    except OSError as error:
+        raise kind(f"cannot be read ({error.strerror or error})", file=path) from error
+    if len(raw) > LARGEST_FILE:
+        raise kind(f"is {len(raw) / 1e6:.1f} MB large", file=path, cure="A table has a few kB.")
+    try:
+        rows = rows_of(decoded(raw))
+    except csv.Error as error:
+        raise kind(f"is no table ({error})", file=path, cure="Save it as CSV.") from error
+    if not rows:
+        raise kind("holds no rows", file=path, cure=f"Columns: {', '.join(needed)}.")
+    missing = [name for name in needed if name not in rows[0].cells]
+    if missing:
+        raise kind(
+            f"has no column {missing[0]!r}", file=path, cure=f"Columns: {', '.join(needed)}."
+        )
+    return rows
+
+
+def band_heading(cell: str) -> str:
+    """A heading in lower case; ``125``, ``125 Hz``, ``1k`` and ``1,000`` become ``a125``, ``a1000``."""
+    name = cell.strip().lower()
+    match = _BAND.fullmatch(name)
+    if match:
+        digits = match[1].replace(",", "") if re.fullmatch(r"\d,\d{3}", match[1]) else match[1]
+        try:
+            hertz = float(digits.replace(",", ".")) * (1000 if match[2] else 1)
+        except ValueError:
+            return name
+        if hertz in OCTAVES:
+            return f"a{hertz:.0f}"
+    return name
