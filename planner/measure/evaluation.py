@@ -9,6 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from planner.measure.bends import bend_of
 from planner.measure.figures import BandDecay, DecayCurve
 from planner.measure.filterbank import BandEnergies
 from planner.measure.lines import (
@@ -16,7 +17,6 @@ from planner.measure.lines import (
     LADDER,
     Line,
     grouped,
-    line_between,
     longest,
     standard_lines,
     times_of,
@@ -34,14 +34,6 @@ GUARD_S = 0.003
 
 SETTLE = 5.0
 """A filter has rung down by 60 dB after this over its width. [-]"""
-
-BEND_RATIO = 9.21
-"""Twice the log-likelihood gained by a second slope before it is believed: 99 % point of χ² with
-two degrees of freedom; single slopes exceed it about once in a hundred. [-]"""
-
-BEND_SIZE = 0.05
-"""Early and late times differ by more than this before a band is called bent: up to 5 % of curvature
-is usual (ISO 3382-2:2008, B.3, from memory). [-]"""
 
 LARGEST_U = 0.5
 """Relative standard uncertainty above which a time says nothing. [-]"""
@@ -144,22 +136,21 @@ def _fit_window(
 def _evaluate(mean: BandEnergies, band: int, count: int, fit: Fits) -> BandDecay:
     nominal, width = mean.bands.nominal[band], float(mean.bands.width[band])
     steady = _steady(mean.times, mean.energy[:, band], width)
-    bend = bend_of(fit, steady)
-    bent = bend > BEND_SIZE
-    best = fit.two if bent else fit.one
+    bend = bend_of(fit.one, fit.two, steady, float(fit.time[-1]))
+    best = fit.two if bend.proven else fit.one
     floor = max(float(best.floor), steady * 1e-12)
     range_db = float(10.0 * np.log10(steady / floor))
     whole, relative = float(fit.one.time_s[0]), float(fit.one.relative_u[0])
     lines = _lines(mean, fit, best, steady, range_db)
     times = times_of(lines)
-    used, reason = choose(lines, range_db, relative, fit.two if bent else None, count)
-    t_s, relative = value_to_use(used, times, whole, relative, bend, count * width)
+    used, reason = choose(lines, range_db, relative, fit.two if bend.proven else None, count)
+    t_s, relative = value_to_use(used, times, whole, relative, bend.doubt, count * width)
     shown = longest(lines)
     line = lines[shown] if shown else None
     flags = [word for word, doubt in (
         ("refused", not used),
-        ("bent", bent),
-        ("curved", not bent and _curved(times, count * width)),
+        ("bent", bend.flagged),
+        ("curved", not bend.flagged and _curved(times, count * width)),
         ("short-range", range_db < 35.0),
         ("limited-by-filter", width * t_s < (4.0 if mean.reverse else 16.0)),
         ("few-decays", bool(used) and relative > FEW_DECAYS_U),
@@ -178,7 +169,7 @@ def _evaluate(mean: BandEnergies, band: int, count: int, fit: Fits) -> BandDecay
         nonlinearity_permille=line.nonlinearity if line else float("nan"),
         whole_s=whole,
         whole_u_s=whole * float(fit.one.relative_u[0]),
-        two_slopes_s=(float(fit.two.time_s[0]), float(fit.two.time_s[1])) if bent else None,
+        two_slopes_s=(float(fit.two.time_s[0]), float(fit.two.time_s[1])) if bend.flagged else None,
         used=used,
         reason=reason,
         t_s=t_s,
@@ -195,24 +186,6 @@ def _steady(times: Array, energy: Array, width: float) -> float:
     if np.count_nonzero(before) < 10:
         before = times < 0.0
     return float(max(energy[before].mean(), 1e-300))
-
-
-def bend_of(fit: Fits, steady: float) -> float:
-    """How much longer the late decay takes than the early one; 0 when the data do not say so.
-
-    Early is −5 to −15 dB, late −15 dB to 5 dB above the noise, both on the curve of two
-    exponentials without noise. [-]
-    """
-    if float(fit.one.deviance - fit.two.deviance) <= BEND_RATIO:
-        return 0.0
-    time = np.linspace(0.0, float(fit.time[-1]), 400)
-    curve = 10.0 * np.log10((fit.two.mean(time) - fit.two.floor) / steady + 1e-30)
-    bottom = 10.0 * np.log10(float(fit.two.floor) / steady) + 5.0
-    early = line_between(time, curve, curve, -5.0, -15.0)
-    late = line_between(time, curve, curve, -15.0, min(bottom, -25.0))
-    if early is None or late is None:
-        return float(fit.two.time_s[1] / fit.two.time_s[0] - 1.0)
-    return max(late.time_s, float(fit.one.time_s[0])) / early.time_s - 1.0
 
 
 def _lines(
@@ -248,7 +221,7 @@ def choose(
     relative
         Relative standard uncertainty of the whole-decay fit. [-]
     slopes
-        Two exponentials where the decay is bent.
+        Two exponentials where the likelihood asks for them.
     count
         Bursts averaged.
     """
@@ -264,12 +237,12 @@ def choose(
         name = longest(lines)
         line = lines[name] if name else None
         if line is None:
-            return "", "the decay is bent, and " + short_range(range_db, "T15", 30.0)
+            return "", "the decay is not straight, and " + short_range(range_db, "T15", 30.0)
         if 0.8 * slopes.time_s[0] < line.time_s < 1.25 * slopes.time_s[1]:
-            return name, f"the decay is bent: {name.upper()} as the standard defines it"
+            return name, f"the decay is not straight: {name.upper()} as the standard defines it"
         return (
             "whole-decay",
-            "the decay seems bent, but too few decays fluctuate too much for a line",
+            "the decay seems not straight, but too few decays fluctuate too much for a line",
         )
     reason = "straight decay: every frame counts, the noise floor is part of the fit"
     if relative > FEW_DECAYS_U:
@@ -279,19 +252,49 @@ def choose(
 
 
 def value_to_use(
-    used: str, times: dict[str, float], whole: float, relative: float, bend: float, samples: float
+    used: str, times: dict[str, float], whole: float, relative: float, doubt: float, samples: float
 ) -> tuple[float, float]:
-    """The time [s] and its relative standard uncertainty; `samples` is n·B. [1/s]."""
+    """The time [s] and its relative standard uncertainty.
+
+    Parameters
+    ----------
+    used, times, whole
+        The evaluation chosen, the lines of the standard and the whole-decay fit. [s]
+    relative
+        Relative standard uncertainty of the whole-decay fit.
+    doubt
+        Relative standard uncertainty because the decay may be bent, see `bends`.
+    samples
+        Number of decays times bandwidth. [1/s]
+    """
     if not used:
         return float("nan"), float("nan")
     if used == "whole-decay":
         # The estimate is even in ln T, so its mean in T lies higher by half the variance.
         corrected = whole / (1.0 + 0.5 * relative**2)
-        return corrected, float(np.hypot(relative, bend / np.sqrt(12.0)))
+        doubt = max(doubt, _disagreement(times, whole, relative, samples))
+        return corrected, float(np.hypot(relative, doubt))
     t_s = times[used]
     others = [times[name] for name in LADDER if np.isfinite(times[name])]
     spread = (max(others) - min(others)) / t_s / np.sqrt(12.0)
     return t_s, float(np.hypot(LINE_SCATTER[used] / np.sqrt(samples * t_s), spread))
+
+
+def _disagreement(times: dict[str, float], whole: float, relative: float, samples: float) -> float:
+    """What the longest line differs from the whole-decay fit beyond chance, relative.
+
+    An efficient estimate does not correlate with its difference from another one of the same
+    truth: the variance of that difference is the difference of the variances (J. A. Hausman,
+    Econometrica 46 (1978) 1251).
+    """
+    name = next((name for name in LADDER if np.isfinite(times[name])), "")
+    if not name:
+        return 0.0
+    scatter = LINE_SCATTER[name] / np.sqrt(samples * whole)
+    if scatter > 0.2:
+        return 0.0
+    chance = max(scatter**2 - relative**2, 0.0)
+    return float(np.sqrt(max(np.log(times[name] / whole) ** 2 - chance, 0.0)))
 
 
 def _curved(times: dict[str, float], samples: float) -> bool:

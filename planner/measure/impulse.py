@@ -33,6 +33,7 @@ from planner.measure.lines import (
     NOISE_MARGIN_DB,
     Line,
     grouped,
+    line_between,
     longest,
     standard_lines,
     straight_line,
@@ -167,7 +168,8 @@ def _figures(
             reason = "the curve does not fall far enough before the noise"
         return replace(refused(nominal, reason, **known), curve=curve)
     t_s = line.time_s
-    relative = _relative_u(used, times, width)
+    deep = line_between(time, level, level, -5.0, min(NOISE_MARGIN_DB - range_db, -35.0))
+    relative = _relative_u(used, times, deep.time_s if deep else np.nan, width)
     return replace(
         refused(nominal, "", **known),
         used=used,
@@ -180,10 +182,15 @@ def _figures(
     )
 
 
-def _relative_u(used: str, times: dict[str, float], width: float) -> float:
-    """An integrated response counts as ten decays (ISO 3382-2:2008, 7.2); and what ranges differ."""
+def _relative_u(used: str, times: dict[str, float], deepest: float, width: float) -> float:
+    """Relative standard uncertainty.
+
+    An integrated response counts as ten decays (ISO 3382-2:2008, 7.2); what the ranges, down to
+    the deepest one, differ among themselves comes on top, as a rectangular distribution.
+    """
     t_s = times[used]
     others = [times[name] for name in LADDER if np.isfinite(times[name])]
+    others += [deepest] if np.isfinite(deepest) else []
     spread = (max(others) - min(others)) / t_s / np.sqrt(12.0)
     return float(np.hypot(LINE_SCATTER[used] / np.sqrt(10.0 * width * t_s), spread))
 

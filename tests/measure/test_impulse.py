@@ -6,8 +6,8 @@ import numpy as np
 import pytest
 
 from planner.errors import RecordingError
-from planner.measure.decay import Decays
-from planner.measure.filterbank import OCTAVE_BANDS
+from planner.measure.decay import Decays, evaluate_decays
+from planner.measure.filterbank import OCTAVE_BANDS, section_energies
 from planner.measure.impulse import evaluate_impulse, onset, truncation
 
 # Reverberation times by pyfar 0.8.1 and pyrato 1.1.0 (noise-compensated backward integration),
@@ -113,3 +113,75 @@ def test_the_onset_is_20_db_under_the_peak():
 def test_silence_is_refused():
     with pytest.raises(RecordingError, match="silence"):
         evaluate_impulse(lambda a, b: np.zeros(b - a), 48000, 0, 48000)
+
+
+def interrupted_in_gallery(response, rate, count, seed):
+    """Pink noise, switched off after 2 s, played through a response, 50 dB above a noise floor."""
+    from scipy.signal import fftconvolve
+
+    rng = np.random.default_rng(seed)
+    length, stop = int(4.5 * rate), 2 * rate
+    shape = np.fft.rfftfreq(length, 1.0 / rate)
+    shape[0] = np.inf
+    arrival = onset(response)
+    bursts = []
+    for _ in range(count):
+        pink = np.fft.irfft(np.fft.rfft(rng.standard_normal(length)) / np.sqrt(shape), length)
+        pink[stop:] = 0.0
+        played = fftconvolve(pink, response)[:length]
+        steady = np.std(played[rate:stop])
+        played += steady * 10.0**-2.5 * rng.standard_normal(length)
+        bursts.append(
+            section_energies(lambda a, b, s=played: s[a:b], rate, rate, length - rate // 4,
+                             origin=stop + arrival)
+        )  # fmt: skip
+    return bursts
+
+
+def test_interrupted_noise_and_impulse_response_agree_within_their_uncertainty(recordings_dir):
+    """The ensemble mean of interrupted noise is the backward integral (Schroeder 1965)."""
+    import soundfile
+
+    response, rate = soundfile.read(recordings_dir / "pyfar_gallery_room_ir.wav")
+    direct = evaluated(recordings_dir / "pyfar_gallery_room_ir.wav")
+    noise = evaluate_decays(interrupted_in_gallery(response, rate, 6, seed=1))
+    bands = slice(1, None)  # the sweep began at 50 Hz: the README gives no value at 63 Hz
+    difference = noise.column("t_s")[bands] - direct.column("t_s")[bands]
+    both = np.hypot(noise.column("u_s")[bands], direct.column("u_s")[bands])
+    assert np.all(np.abs(difference) < 2.0 * both)
+    for nominal, values in GALLERY["t30_s"].items():
+        index = OCTAVE_BANDS.nominal.index(nominal)
+        # 5 % (10 % at 250 Hz) between the two libraries, two u of the noise on top
+        allowed = 0.10 if nominal == 250 else 0.05
+        band = noise.each[index]
+        least = min(abs(band.t_s - value) for value in values)
+        assert least < allowed * band.t_s + 2.0 * band.u_s, nominal
+
+
+@pytest.mark.parametrize("file", ["pyfar_gallery_room_ir.wav", "seminar_room_clap.wav"])
+def test_another_filter_bank_with_plain_backward_integration_agrees(recordings_dir, file):
+    """The filters of pyfar, integrated backwards from the noise, without compensation.
+
+    T20 from 500 Hz up within 5 %: what its order-14 filters and a plain cut may differ.
+    """
+    import pyfar
+    import soundfile
+
+    samples, rate = soundfile.read(recordings_dir / file)
+    ours = evaluate_impulse(lambda a, b: samples[a:b], rate, 0, len(samples))
+    begin = onset(samples)
+    signal = pyfar.Signal(samples, rate)
+    filtered = pyfar.dsp.filter.fractional_octave_bands(
+        signal, 1, frequency_range=(500, 8000)
+    ).time[:, 0]
+    for nominal, band in zip((500, 1000, 2000, 4000, 8000), filtered, strict=True):
+        squared = band[begin:] ** 2
+        noise = squared[int(0.9 * len(squared)) :].mean()
+        smooth = np.convolve(squared, np.ones(rate // 50) / (rate // 50), "same")
+        end = int(np.argmax(smooth < 3.0 * noise))
+        decay = np.cumsum(squared[:end][::-1])[::-1]
+        level = 10.0 * np.log10(decay / decay[0])
+        first, last = np.argmax(level < -5.0), np.argmax(level < -25.0)
+        slope = np.polyfit(np.arange(first, last) / rate, level[first:last], 1)[0]
+        got = ours.column("t20_s")[OCTAVE_BANDS.nominal.index(nominal)]
+        assert got == pytest.approx(-60.0 / slope, rel=0.05), nominal
