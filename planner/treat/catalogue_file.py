@@ -264,6 +264,7 @@ def _product(row: _Row) -> Product:
         else getattr(material, "thickness_mm", None),
         gap_mm=gap if gap is not None else getattr(material, "gap_mm", None),
         mounting=row.text("mounting", 60).lower()
+        or (material.mounting if material else "")
         or {"piece": "direct", "m2": "direct", "item": "free-standing"}[unit],
         surfaces=_surfaces(row, unit),
         pack=_pack(row, unit),

@@ -153,7 +153,7 @@ def suggest(
     clock = Clock(time_limit)
     found = solve(task, clock, gap)
     answer = describe(task, found)
-    if explain and not answer.meets_target:
+    if explain and answer.status == Status.INFEASIBLE:
         more = relaxations(task.problem, task.windows, task.judged, catalogue, Clock(time_limit))
         answer = replace(answer, relaxations=more)
     if second_opinion or simulation is not None:

@@ -52,10 +52,10 @@ class Outcome:
         """Proven relative distance from the optimum; inf where nothing was found. [-]."""
         if self.values is None:
             return float("inf")
-        if self.status is Status.OPTIMAL:
-            return 0.0
-        distance = max(0.0, self.objective - self.bound)
-        return distance / max(abs(self.objective), 1e-9)
+        if self.status is Status.OPTIMAL and not np.isfinite(self.bound):
+            return 0.0  # without whole numbers there is no tree and no bound to report
+        distance = max(0.0, self.objective - self.bound) / max(abs(self.objective), 1e-9)
+        return distance if distance > 1e-6 else 0.0
 
 
 @dataclass(slots=True)

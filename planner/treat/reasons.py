@@ -177,7 +177,8 @@ def _whole(
     for kind, where, changes, says in _switches(asked):
         limits = asked.limits.model_copy(update=changes)
         given = {cap.surface: cap.most for cap in asked.caps if cap.kind == "area"}
-        freed = problem(asked.surfaces, catalogue, limits, area_limits=given, covers=asked.covers)
+        covers = () if kind == "covers" else asked.covers
+        freed = problem(asked.surfaces, catalogue, limits, area_limits=given, covers=covers)
         answer = cheapest(freed, windows, judged, Clock(min(SECONDS_EACH, clock.left)), gap=1e-3)
         if answer is not None:
             cost = freed.cost(answer.amounts) if freed.is_priced else None
@@ -201,6 +202,8 @@ def _switches(asked: Problem) -> list[tuple[str, str, dict[str, object], str]]:
         found.append(("thickness", "", {"min_thickness_mm": None}, "allow thinner build-ups"))
     if limits.rented:
         found.append(("rented", "", {"rented": False}, "allow screws in walls and ceiling"))
+    if asked.covers:
+        found.append(("covers", "", {}, "leave the first reflections uncovered"))
     if limits.evenness is not None:
         found.append(("evenness", "", {"evenness": None}, "give up the evenness of the axes"))
     return found

@@ -77,22 +77,40 @@ def cheapest(
 def closest(
     problem: Problem, windows: Sequence[Windows], judged: NDArray[np.bool_], clock: Clock
 ) -> Found:
-    """Where the target cannot be met: least shortfall in the worst band, then in sum, then cost.
+    """Where the target cannot be met: least shortfall, then least cost.
 
     Shortfall of a band is the absorption area it lacks, or has too much, over that of the limit.
+    First the worst band is made as good as can be, each band counted from the least shortfall that
+    is possible in it alone (so that a band which nothing can help does not keep the others from
+    being helped); then the sum over the bands; then the cost.
     """
     dropped: tuple[str, ...] = ()
     for ease, names in _attempts(problem):
         built = treatment(problem, windows, judged, soft=True, ease=ease)
-        worst = built.programme.unknowns(1, high=MOST_SHORT)
-        for band in built.short:
-            built.programme.row((int(band), 1.0), (worst, -1.0), high=0.0)
-        outcome = built.programme.solve((worst, 1.0), seconds=clock.left / 3)
+        least = _least_possible(built, clock)
         dropped = names
+        if least is None:
+            continue
+        worst = built.programme.unknowns(1, high=MOST_SHORT)
+        for band, possible in zip(built.short, least, strict=True):
+            built.programme.row((int(band), 1.0), (worst, -1.0), high=_slightly_above(possible))
+        outcome = built.programme.solve((worst, 1.0), seconds=clock.left / 3)
         if outcome.status is not Status.INFEASIBLE:
             return _in_order(built, worst, outcome, clock, dropped)
     nothing = np.zeros(len(problem.choices))
     return Found(Status.INFEASIBLE, nothing, 0.0, dropped)
+
+
+def _least_possible(built: Treatment, clock: Clock) -> list[float] | None:
+    """Least shortfall of each band alone; None where the other limits leave no list at all."""
+    least = []
+    for band in built.short:
+        share = clock.left / (2 * len(built.short))
+        outcome = built.programme.solve((int(band), 1.0), seconds=share)
+        if outcome.status is Status.INFEASIBLE:
+            return None
+        least.append(outcome.objective if outcome.values is not None else 0.0)
+    return least
 
 
 def _attempts(problem: Problem) -> list[tuple[Ease, tuple[str, ...]]]:
@@ -131,7 +149,7 @@ def _in_order(
     amounts = built.amounts_of(best)
     assert best.values is not None
     met = float(np.max(best.values[built.short], initial=0.0)) <= SLACK
-    if met:
+    if met and not dropped:
         return Found(best.status, amounts, gap, dropped)
     return Found(Status.INFEASIBLE if timely else Status.TIME_LIMIT, amounts, gap, dropped)
 

@@ -1,0 +1,6 @@
+"""Makes `treat_rooms` (rooms and products of these tests) importable."""
+
+import sys
+from pathlib import Path
+
+sys.path.insert(0, str(Path(__file__).parent))
