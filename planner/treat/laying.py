@@ -8,10 +8,14 @@ the modes press, and by how tidy they are. When none holds all panels, the dense
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from itertools import islice
 
 from planner.treat.free_field import TOUCH, Box, Field
 from planner.treat.packing import Size, densest, fitting
+
+MOST_STACKS = 4
+"""Places of one stack on the middle line that are tried."""
 
 MOST_ROWS = 5
 """Rows of one product that are tried as a block."""
@@ -100,9 +104,10 @@ def lay_mirrored(field: Field, sizes: Sequence[Size], count: int, wish: Wish) ->
     best: tuple[tuple[float, ...], list[Box]] | None = None
     for astride in _astride(both, sizes, count, wanted):
         half = both.without([right_half, *astride])
-        side = lay(half, sizes, (count - len(astride)) // 2, wanted)
+        own = replace(wanted, beside=(*wanted.beside, *astride))
+        side = lay(half, sizes, (count - len(astride)) // 2, own)
         boxes = [*astride, *side, *(box.mirrored(width) for box in side)]
-        score = (float(len(boxes)), *judged(boxes, wanted), -float(len(astride)))
+        score = (float(len(boxes)), *judged(boxes, wanted), -_lines(boxes, wanted.beside))
         if best is None or score > best[0]:
             best = (score, boxes)
     return best[1] if best else []
@@ -115,14 +120,21 @@ def _astride(field: Field, sizes: Sequence[Size], count: int, wish: Wish) -> Ite
     middle = _middle_of(field, wish)
     for width, height in sizes:
         for number in range(2 - count % 2, min(count, MOST_ROWS) + 1, 2):
-            for bottom in _bottoms(field, number * height, wish, middle):
-                stack = [
+            stacks = (
+                [
                     Box(0.5 * (field.width - width), bottom + n * height, width, height)
                     for n in range(number)
                 ]
-                if all(field.holds(box) for box in stack):
-                    yield stack
-                    break
+                for bottom in _bottoms(field, number * height, wish, middle)
+            )
+            holding = (stack for stack in stacks if all(field.holds(box) for box in stack))
+            yield from islice(holding, MOST_STACKS)
+
+
+def _lines(boxes: Sequence[Box], beside: Sequence[Box]) -> float:
+    """How many different heights and sizes of rows the eye sees, those of neighbours not counted."""
+    known = {(round(box.bottom, 4), round(box.height, 4)) for box in beside}
+    return float(len({(round(box.bottom, 4), round(box.height, 4)) for box in boxes} - known))
 
 
 def judged(boxes: Sequence[Box], wish: Wish) -> tuple[float, float]:
@@ -237,7 +249,7 @@ def _ways(
             over = _over(stretches, width, columns, targets[:enough])
             if over is not None:
                 yield 0.8, over
-                yield 0.7, _evened(over, stretches, width, targets[:enough])
+                yield 0.9, _evened(over, stretches, width, targets[:enough])
                 break
     left, right = stretches[0][0], stretches[-1][1]
     yield 0.6, _beside(stretches, width, columns, 0.5 * (left + right))
@@ -334,10 +346,11 @@ def _evened(
     centre = targets[0].left + 0.5 * targets[0].width
     nearest = min(range(len(places)), key=lambda k: abs(places[k] + 0.5 * width - centre))
     for left, right in stretches:
-        if not (left - TOUCH <= centre <= right + TOUCH) or len(places) < 2:
+        inside = left - TOUCH <= min(places) and max(places) + width <= right + TOUCH
+        if not inside or len(places) < 2:
             continue
         before, after = nearest, len(places) - 1 - nearest
-        start = centre - 0.5 * width
+        start = min(max(centre - 0.5 * width, left), right - width)
         steps = [(start - left) / before] if before else []
         steps += [(right - width - start) / after] if after else []
         step = min(steps)

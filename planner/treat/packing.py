@@ -20,7 +20,7 @@ STEP = 0.025
 """Steps of the heights tried beside slanted edges. [m]"""
 
 MOST_LEVELS = 1500
-"""Heights tried at most; beyond it they are thinned to steps."""
+"""Heights from which no further ones are derived: with that many the best is as good as found."""
 
 Size = tuple[float, float]
 
