@@ -2,7 +2,7 @@
 
 A diffuse-field formula does not see where the panels are. The directional formulas do, and so does
 a simulation. Where they say that a list misses the target, limits are added and the programme is
-solved again: for Arau-Puchades a tangent to its formula, for a simulation the target shifted by the
+solved again: for Arau-Puchades its formula by tangents, for a simulation the target shifted by the
 ratio between its times and the formula's, band by band.
 """
 
@@ -15,14 +15,14 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.air import speed_of_sound
 from planner.bands import OCTAVES
 from planner.room.surfaces import RoomSurfaces
+from planner.treat.directions import Directions, directions_of
 from planner.treat.option import treated
 from planner.treat.programme import Cut
 from planner.treat.stages import Clock, cheapest
 from planner.treat.suggestion import Opinion, SecondOpinion, Suggestion
-from planner.treat.windows import CAP, air_m, decay_area, effective_volume, windows
+from planner.treat.windows import windows
 
 if TYPE_CHECKING:
     from planner.treat.optimise import Task
@@ -115,13 +115,17 @@ def _corrected(
 
     cuts: list[Cut] = []
     main = task.names[0]
+    directions = directions_of(task) if directional else None
+    axial = None
+    if directions is not None:
+        axial = directions.below(np.where(task.judged, task.target.high * (1 + NEAR), np.nan))
     for _ in range(ROUNDS):
         own = times_by(task, room, (main,))[main]
         low, high = _shifted(task, own, opinions)
         limits = windows(task.surfaces, task.air, low, high, task.names)
-        if directional:
-            cuts += directional_cuts(task, amounts)
-        found = cheapest(task.problem, limits, task.judged, clock, gap=gap, cuts=cuts)
+        if directions is not None:
+            cuts += directional_cuts(task, directions, amounts)
+        found = cheapest(task.problem, limits, task.judged, clock, gap=gap, cuts=cuts, axial=axial)
         if found is None:
             return None
         amounts = found.amounts
@@ -135,15 +139,13 @@ def _corrected(
     return None
 
 
-def directional_cuts(task: Task, amounts: Array) -> list[Cut]:
+def directional_cuts(task: Task, directions: Directions, amounts: Array) -> list[Cut]:
     """Tangents to the Arau-Puchades time at a list, one for each limit it passes there.
 
-    −ln T is a sum over the axes of w ln(−S ln(1 − a) + 4 m V) with a linear in the amounts; it is
-    concave while no axis has a mean coefficient above 0.63, so that a tangent to the upper limit
-    cuts off no list that keeps it. Beyond that, and for lower limits, it is a local approximation:
-    what it leads to is checked with the formula itself.
+    For upper limits exact while no axis has a mean coefficient above 0.63; for lower limits a local
+    approximation. What they lead to is checked with the formula itself.
     """
-    times, slopes = _arau_and_slopes(task, amounts)
+    times, slopes = directions.times(amounts), directions.slopes(amounts)
     cuts = []
     for band in np.flatnonzero(task.judged):
         high = task.target.high[band] * (1 + NEAR)
@@ -155,27 +157,6 @@ def directional_cuts(task: Task, amounts: Array) -> list[Cut]:
         elif times[band] < low:
             cuts.append(Cut(-slope, -here + float(np.log(low / times[band]))))
     return cuts
-
-
-def _arau_and_slopes(task: Task, amounts: Array) -> tuple[Array, Array]:
-    """Arau-Puchades' time ``(band,)`` and the slope of −ln T per unit of each choice."""
-    surfaces, asked = task.surfaces, task.problem
-    size, start, effect = asked.axis_areas("eyring")
-    volume = effective_volume(surfaces)
-    items = surfaces.item_count @ surfaces.item_area / surfaces.surface_area
-    lone = asked.standing_effect() / surfaces.surface_area
-    there = size > 0
-    divisor = np.where(there, size, 1.0)[:, None]
-    alpha = (start + np.einsum("c,cjb->jb", amounts, effect)) / divisor + items + amounts @ lone
-    alpha = np.clip(alpha, 0.0, CAP)
-    speed = float(speed_of_sound(task.air.temperature_c))
-    decay = -surfaces.surface_area * np.log1p(-alpha) + 4.0 * air_m(task.air) * volume
-    weight = (size / size.sum())[:, None]
-    axial = decay_area(volume, 1.0, speed) / decay
-    times: Array = np.exp(np.sum(weight * np.log(axial), axis=0))
-    steep = weight * surfaces.surface_area / ((1.0 - alpha) * decay)
-    slopes: Array = np.einsum("jb,cjb->cb", steep / divisor, effect) + lone * steep.sum(axis=0)
-    return times, slopes
 
 
 def _shifted(task: Task, own: Array, opinions: tuple[Opinion, ...]) -> tuple[Array, Array]:

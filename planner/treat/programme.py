@@ -196,6 +196,28 @@ class Cut:
     least: float
 
 
+@dataclass(frozen=True, slots=True)
+class Axial:
+    """A limit on a sum over the axes of concave functions of their mean coefficients.
+
+    Each function lies under its tangents, which are the rows; what lies between the tangents is
+    left to cuts.
+    """
+
+    start: Array
+    """Mean coefficient of each axis, shape ``(3, band)``. [-]"""
+    slope: Array
+    """Per unit of each choice, shape ``(choice, 3, band)``. [-]"""
+    knots: Array
+    """Coefficients where the tangents touch, shape ``(knot,)``. [-]"""
+    value: Array
+    """Of the function there, shape ``(knot, 3, band)``."""
+    steepness: Array
+    """Of the function there, shape ``(knot, 3, band)``."""
+    least: Array
+    """The sum must reach that, shape ``(band,)``; −inf where it need not."""
+
+
 @dataclass(slots=True)
 class Treatment:
     """The programme of one problem with the numbers of its unknowns."""
@@ -238,6 +260,7 @@ def treatment(
     count_products: bool = False,
     without: Sequence[frozenset[str]] = (),
     cuts: Sequence[Cut] = (),
+    axial: Axial | None = None,
 ) -> Treatment:
     """Build the programme of a problem.
 
@@ -259,6 +282,8 @@ def treatment(
         Sets of products of which at least one must be missing.
     cuts
         Further rows.
+    axial
+        A limit on the three axes together.
     """
     programme = Programme()
     choices = problem.choices
@@ -282,6 +307,8 @@ def treatment(
     _evenness_rows(programme, problem, amounts, ease)
     for cut in cuts:
         programme.row((amounts, cut.weights), low=cut.least)
+    if axial is not None:
+        _axial_rows(programme, amounts, axial)
     if not ease.covers:
         _cover_rows(programme, problem, amounts)
     limit = problem.limits.max_products
@@ -388,6 +415,24 @@ def _evenness_rows(
                 programme.row(
                     (amounts, slope[:, one] - ratio * slope[:, other]),
                     high=float(ratio * mean[other] - mean[one]),
+                )
+
+
+def _axial_rows(programme: Programme, amounts: NDArray[np.intp], axial: Axial) -> None:
+    for band in np.flatnonzero(np.isfinite(axial.least)):
+        parts = programme.unknowns(3, low=-100.0, high=100.0)
+        programme.row((parts, 1.0), low=float(axial.least[band]))
+        for axis, part in enumerate(parts):
+            for knot, value, steep in zip(
+                axial.knots,
+                axial.value[:, axis, band],
+                axial.steepness[:, axis, band],
+                strict=True,
+            ):
+                programme.row(
+                    (int(part), 1.0),
+                    (amounts, -steep * axial.slope[:, axis, band]),
+                    high=float(value + steep * (axial.start[axis, band] - knot)),
                 )
 
 

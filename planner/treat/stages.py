@@ -13,6 +13,7 @@ from planner.treat.problem import Problem
 from planner.treat.programme import (
     MOST_SHORT,
     SLACK,
+    Axial,
     Cut,
     Ease,
     Outcome,
@@ -65,9 +66,10 @@ def cheapest(
     gap: float = 0.0,
     without: Sequence[frozenset[str]] = (),
     cuts: Sequence[Cut] = (),
+    axial: Axial | None = None,
 ) -> Found | None:
     """The cheapest list inside the target; None where there is none (or none was found in time)."""
-    built = treatment(problem, windows, judged, without=without, cuts=cuts)
+    built = treatment(problem, windows, judged, without=without, cuts=cuts, axial=axial)
     outcome = built.programme.solve(built.price, seconds=clock.left, gap=gap)
     if outcome.values is None:
         return None
