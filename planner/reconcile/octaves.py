@@ -50,7 +50,7 @@ def octave_times(measured: Measured) -> OctaveTimes:
             "as of a survey."
         )
     by_band = {hz: (t, u) for hz, t, u in zip(bands, times, errors, strict=True)}
-    if any(hz not in OCTAVES for hz in bands):
+    if any(hz in THIRDS and hz not in OCTAVES for hz in bands):
         warnings.append("The measurement is in one-third octaves: three are joined to an octave.")
         pairs = [_joined(by_band, hz) for hz in OCTAVES]
     else:
