@@ -8,8 +8,10 @@ against its schema. Light and dark pages differ in four named colours and in the
 from __future__ import annotations
 
 import functools
+import hashlib
 import json
 import math
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from html import escape
@@ -160,10 +162,24 @@ def to_svg(chart: Chart, theme: Theme = LIGHT) -> str:
         vl-convert is not installed.
     """
     converter = _converter()
-    svg: str = converter.vegalite_to_svg(json.dumps(chart.vega_lite(theme)), vl_version=VEGALITE)
+    spec = json.dumps(chart.vega_lite(theme))
+    svg = _own_names(converter.vegalite_to_svg(spec, vl_version=VEGALITE), spec)
     name = f"<title>{escape(chart.description)}</title>"
     start = svg.index(">", svg.index("<svg")) + 1
     return f'{svg[: start - 1]} role="img">{name}{svg[start:]}'
+
+
+def _own_names(svg: str, spec: str) -> str:
+    """Ids inside a picture that do not depend on how many were drawn before it.
+
+    They also differ from those of other pictures, so that several may stand in one HTML page.
+    """
+    mark = hashlib.sha256(spec.encode("utf-8", "replace")).hexdigest()[:8]
+    names = dict.fromkeys(re.findall(r'\bid="([^"]+)"', svg))
+    stable = {name: f"c{mark}-{n}" for n, name in enumerate(names)}
+    for old, new in stable.items():
+        svg = svg.replace(f'id="{old}"', f'id="{new}"').replace(f"url(#{old})", f"url(#{new})")
+    return svg
 
 
 @functools.cache
