@@ -19,6 +19,9 @@ from planner.treat.packing import Size, densest
 if TYPE_CHECKING:
     from planner.treat.placement import Placement
 
+SHEET_STEP = 0.25
+"""Height of the strips beside slanted edges. [m]"""
+
 UPRIGHT_WORDS = ("do not turn", "not to be turned", "upright only")
 """Words in a product's note that forbid turning it by 90°."""
 
@@ -162,16 +165,29 @@ def same_size(one: Field, other: Field) -> bool:
 
 
 def sheets(field: Field) -> list[Box]:
-    """The free part of a surface as upright rectangles without gaps, the largest first. [m].
+    """The free part of a surface as rectangles without gaps, the largest first. [m].
 
     Between two neighbouring levels at which an obstacle begins or ends, the free stretches are cut
     out; stretches above each other with the same ends are joined. Beside slanted edges the
-    rectangle inside is taken.
+    rectangles inside are taken, in strips of `SHEET_STEP`: what a fitter cuts to the slant is more.
+
+    Upright strips are taken instead where they give more.
     """
+    level = _strips(field)
+    if field.is_slanted:
+        upright = [box.turned() for box in _strips(field.turned())]
+        level = max(level, upright, key=lambda boxes: sum(b.width * b.height for b in boxes))
+    return sorted(level, key=lambda box: (-box.width * box.height, box.left, box.bottom))
+
+
+def _strips(field: Field) -> list[Box]:
+    """Rectangles of level strips, without gaps. [m]."""
+    steps = [n * SHEET_STEP for n in range(int(field.height / SHEET_STEP) + 1)]
+    heights = (field.low, field.high, *field.starts, *field.ends)
     levels = sorted(
         {
             level
-            for level in (field.low, field.high, *field.starts, *field.ends)
+            for level in (*heights, *(steps if field.is_slanted else ()))
             if field.low - TOUCH <= level <= field.high + TOUCH
         }
     )
@@ -193,5 +209,4 @@ def sheets(field: Field) -> list[Box]:
                 done.append(box)
         open_boxes = going + [Box(left, low, right - left, high - low) for left, right in stretches]
     boxes = [box.grown(-0.5 * field.gap) for box in done + open_boxes]
-    boxes = [box for box in boxes if box.width > TOUCH and box.height > TOUCH]
-    return sorted(boxes, key=lambda box: (-box.width * box.height, box.left, box.bottom))
+    return [box for box in boxes if box.width > TOUCH and box.height > TOUCH]

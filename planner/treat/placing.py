@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
+from functools import cached_property
 from itertools import islice, permutations
 
 from planner.errors import OptionError
@@ -74,6 +75,11 @@ class Job:
             return float(item.count - len(boxes))
         return (item.area or 0.0) - sum(box.width * box.height for box in boxes)
 
+    @cached_property
+    def _bare(self) -> Mapping[str, Field]:
+        """Surfaces without any gap, for what a person drew."""
+        return fields(self.room, gap=0.0)
+
     def _now(self, surface: str) -> Field:
         """What is still free on a surface."""
         taken = self.taken[surface]
@@ -89,8 +95,7 @@ class Job:
         """A place that a person drew: closer than the gap is theirs to decide, overlap is not."""
         surface = self.items[number].surface
         half = 0.5 * self.free[surface].gap
-        bare = fields(self.room, gap=0.0)[surface]
-        if not bare.without(b.grown(-half) for b in self.taken[surface]).holds(box):
+        if not self._bare[surface].without(b.grown(-half) for b in self.taken[surface]).holds(box):
             raise OptionError(
                 f"{self.items[number].product!r} at {box.left:g}, {box.bottom:g} m on {surface!r} "
                 "lies over an opening, a keep-out or another panel, or leaves the surface",

@@ -487,6 +487,19 @@ def test_goods_by_the_square_metre_fill_what_is_left():
     assert too_much.unplaced["floor", "carpet"] == pytest.approx(30.0 - 4.96 * 3.96)
 
 
+@pytest.mark.parametrize("footprint", FOOTPRINTS)
+def test_carpet_on_floors_of_any_shape(footprint):
+    """Inside the floor, off the keep-out, and at least 85 % of what shapely says is free."""
+    room = room_of(keep_out("floor", 2.0, 1.5, 0.5, 0.5), footprint=footprint)
+    most = fitting_limits(room, CATALOGUE).pieces["floor", "carpet"]
+    placement = place(room, option(("carpet", "floor", most)), CATALOGUE)
+    check(room, placement)
+    assert placement.unplaced == {}
+    laid = sum(p.width * p.height for p in placement.panels)
+    assert laid == pytest.approx(most)
+    assert 0.85 * (Polygon(footprint).area - 0.25) < most < Polygon(footprint).area - 0.25
+
+
 def test_numbers_and_order_are_stable():
     wanted = option(("tall", "left", 3), ("square", "ceiling", 5), ("trap", "front", 2))
     one, other = (place(room_of(), wanted, CATALOGUE) for _ in range(2))
