@@ -198,7 +198,7 @@ def acceptance_document(
     """
     sections = acceptance_sections(acceptance, target, before=before)
     lines = Builder().table(
-        ("", ""), [*facts, ("Measured by", ""), ("Accepted by, date", "")], wide=1
+        ("what", "value"), [*facts, ("Measured by", ""), ("Accepted by, date", "")], wide=1
     )
     sections += lines.section("Measurement and signatures", level=2)
     return Document(

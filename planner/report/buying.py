@@ -29,7 +29,7 @@ class BuyingLine:
     number: int
     """Of the line."""
     panels: str
-    """Numbers of its panels on the drawings, ``P1–P6``; empty for what is not drawn."""
+    """Numbers of its panels on the drawings, ``P1–P6, P9``; empty for what is not drawn."""
     item: str
     where: str
     pieces: int | None
@@ -108,7 +108,9 @@ def buying_list(
         Layers of products that are built by hand, by product id; those that the catalogue gives
         as a build-up are taken by themselves.
     """
-    numbers = panel_numbers(option)
+    numbers: dict[str, list[int]] = {}
+    for panel in placed_panels(option, catalogue, room):
+        numbers.setdefault(panel.product, []).append(int(panel.number[1:]))
     sold = supplies or (IMPERIAL if units == "ft" else Supplies())
     lines = []
     for number, line in enumerate(bought.lines, 1):
@@ -123,7 +125,7 @@ def buying_list(
         lines.append(
             BuyingLine(
                 number=number,
-                panels=number_range(numbers.get(line.product, ())),
+                panels=number_ranges(numbers.get(line.product, ())),
                 item=line.item or line.product,
                 where=_where(option, line.product, Quantities(units)),
                 pieces=line.pieces,
@@ -159,55 +161,48 @@ def buying_list(
     )
 
 
-def panel_numbers(option: Option) -> dict[str, list[str]]:
-    """Numbers of the panels of each product, in the order of the list: P1, P2, …, by product id.
+def placed_panels(option: Option, catalogue: Catalogue, room: Room) -> list[Panel]:
+    """Every panel of an option that has a place, numbered P1, P2, … as on the list.
 
-    Things sold by the square metre, and things standing free, get no number.
+    Numbers run surface by surface, left to right, bottom to top, as `planner.treat.placement`
+    gives them.
     """
-    numbers: dict[str, list[str]] = {}
-    following = 1
-    for product in option.products:
-        for item in option.items:
-            if item.product == product and item.count is not None and item.surface != "free":
-                own = numbers.setdefault(product, [])
-                own += [f"P{following + n}" for n in range(item.count)]
-                following += item.count
-    return numbers
-
-
-def placed_panels(option: Option, catalogue: Catalogue) -> list[Panel]:
-    """Every panel of an option that has a place, numbered as on the list."""
-    numbers = {product: iter(own) for product, own in panel_numbers(option).items()}
+    order = {name: n for n, name in enumerate(room.surface_names)}
+    places = sorted(
+        (order.get(item.surface, len(order)), round(place[0], 4), round(place[1], 4), n, place)
+        for n, item in enumerate(option.items)
+        for place in item.placement
+    )
     panels = []
-    for product_id in option.products:
-        product = catalogue.get(product_id)
-        for item in option.items:
-            if item.product != product_id:
-                continue
-            own = numbers.get(product_id, iter(()))
-            names = [next(own, "") for _ in range(item.count or 0)]
-            for place, (left, bottom, width, height) in enumerate(item.placement):
-                panels.append(
-                    Panel(
-                        number=names[place] if place < len(names) else "",
-                        surface=item.surface,
-                        left=left,
-                        bottom=bottom,
-                        width=width,
-                        height=height,
-                        label=product.description if product else product_id,
-                        thickness_mm=product.thickness_mm if product else None,
-                        gap_mm=product.gap_mm if product else None,
-                    )
-                )
+    for number, (_, _, _, n, (left, bottom, width, height)) in enumerate(places, 1):
+        item = option.items[n]
+        product = catalogue.get(item.product)
+        panels.append(
+            Panel(
+                number=f"P{number}",
+                surface=item.surface,
+                left=left,
+                bottom=bottom,
+                width=width,
+                height=height,
+                label=(product.description or product.id) if product else item.product,
+                thickness_mm=product.thickness_mm if product else None,
+                gap_mm=product.gap_mm if product else None,
+                product=item.product,
+            )
+        )
     return panels
 
 
-def number_range(numbers: Sequence[str]) -> str:
-    """``P1–P6`` for numbers that follow each other, as they do within a product."""
-    if not numbers:
-        return ""
-    return numbers[0] if len(numbers) == 1 else f"{numbers[0]}–{numbers[-1]}"
+def number_ranges(numbers: Sequence[int]) -> str:
+    """``P1–P5, P8`` for 1 to 5 and 8."""
+    runs: list[list[int]] = []
+    for number in sorted(numbers):
+        if runs and number == runs[-1][-1] + 1:
+            runs[-1].append(number)
+        else:
+            runs.append([number])
+    return ", ".join(f"P{run[0]}" + (f"–P{run[-1]}" if len(run) > 1 else "") for run in runs)
 
 
 def _where(option: Option, product: str, show: Quantities) -> str:

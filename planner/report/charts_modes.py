@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike
 
+from planner.bands import band_edges
 from planner.report.chart import (
     MOST_ROWS,
     Chart,
@@ -25,9 +26,12 @@ KINDS: dict[str, tuple[str, str]] = {
     "axial": ("untreated", "triangle-up"),
     "tangential": ("option-a", "circle"),
     "oblique": ("option-b", "diamond"),
+    "level": ("untreated", "triangle-up"),
+    "upright": ("option-a", "circle"),
+    "mixed": ("option-b", "diamond"),
     "other": ("measured", "square"),
 }
-"""Look and marker of each kind of mode; kinds that are none of the first three are ``other``."""
+"""Look and marker of each kind of mode; kinds not listed here are ``other``."""
 
 TICKS = (10, 16, 20, 25, 31.5, 40, 50, 63, 80, 100, 125, 160, 200, 250, 315, 400, 500, 630, 800)
 
@@ -135,10 +139,10 @@ def mode_count(
 ) -> Chart:
     """Number of modes in each one-third-octave band; too few, and a falling count, stick out."""
     count = np.asarray(counts, int)
-    edge = 2.0 ** (1 / 6)
+    low, high = band_edges(list(bands_hz), fraction=3)
     rows = [
-        {"from": round(hz / edge, 3), "to": round(hz * edge, 3), "band": hz, "count": int(n)}
-        for hz, n in zip(bands_hz, count, strict=True)
+        {"from": number(a), "to": number(b), "band": hz, "count": int(n)}
+        for a, b, hz, n in zip(low, high, bands_hz, count, strict=True)
     ]
     x = {"field": "from", **band_axis(bands_hz), "type": "quantitative"}
     x["axis"] = {**x["axis"], "values": list(bands_hz)}

@@ -59,6 +59,8 @@ class Panel:
     """[mm]"""
     gap_mm: float | None = None
     """Air behind it. [mm]"""
+    product: str = ""
+    """Its id in the catalogue."""
 
     @property
     def depth(self) -> float:
@@ -260,7 +262,10 @@ def _boxed_text(
     shown: list[tuple[str, float, str]] = []
     used = 0.0
     for number, text in enumerate(lines):
+        whole = _fits(text, room_along, 1.5)
         text, size = _fitting(text, room_along, 3.0 if layer == "number" and number == 0 else 2.2)
+        if number > 0 and not whole:
+            continue
         if text and used + 1.25 * size <= room_up:
             shown.append((text, size, layer if number == 0 else "note"))
             used += 1.25 * size
@@ -279,11 +284,15 @@ def _boxed_text(
 DIGIT = 0.6
 
 
+def _fits(text: str, room: float, size: float) -> bool:
+    return DIGIT * size * len(" ".join(text.split())) <= room
+
+
 def _fitting(text: str, room: float, size: float) -> tuple[str, float]:
     """Text that fits into `room` millimetres: smaller type down to 1.5 mm, then shortened."""
     text = " ".join(text.split())
     for tried in (size, 0.8 * size, 1.8, 1.5):
-        if tried <= size and DIGIT * tried * len(text) <= room:
+        if tried <= size and _fits(text, room, tried):
             return text, tried
     most = int(room / (DIGIT * 1.8))
     return (shortened(text, most), 1.8) if most >= 3 else ("", 1.5)

@@ -53,6 +53,6 @@ def report_document(data: ReportData) -> Document:
         paper=data.paper,
         date=data.date,
         timestamp=data.timestamp,
-        footer=f"{data.room.name}, room treatment report",
+        footer=f"Room treatment report, {data.room.name}",
         contents=False,
     )

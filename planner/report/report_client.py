@@ -27,7 +27,7 @@ def client_page(data: ReportData) -> list[Section]:
                 charts.Series("After treatment", after, "option-a", assumed_hz=_assumed(data))
             )
         chart = charts.reverberation(
-            series, data.target, title="How long the room rings", height=190
+            series, data.target, title="How long the room rings", height=165
         )
         builder.chart(chart)
     builder.table(("octave band", "now (s)", "after (s)", "target (s)"), _rows(data, now, after),
@@ -73,7 +73,7 @@ def _sentences(data: ReportData, now: Array | None, after: Array | None) -> list
     if now is not None:
         how = "measured" if data.measurement is not None else "predicted"
         said.append(
-            f"Now: speech in {data.room.name} rings for {middle(now):.2f} s ({how}, mean of 500 Hz and 1 kHz)."
+            f"Now: speech in this room rings for {middle(now):.2f} s ({how}, mean of 500 Hz and 1 kHz)."
         )
     if data.target is not None:
         low, high = (np.asarray(limits, float) for limits in (data.target.low, data.target.high))

@@ -108,7 +108,7 @@ def mode_sections(data: ReportData) -> list[Section]:
         ("mode", "Hz", "kind", "decay time (s)"),
         rows,
         right=(1, 3),
-        wide=2,
+        wide=-1,
         caption=caption,
         small=True,
     )
@@ -199,7 +199,7 @@ def calibration_sections(data: ReportData) -> list[Section]:
         ("material", "band", "assumed", "fits the measurement"),
         data.calibrated,
         right=(2, 3),
-        wide=0,
+        wide=-1,
         small=True,
     )
     return builder.section("Calibration: what the measurement says about the surfaces")

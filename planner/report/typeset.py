@@ -152,4 +152,4 @@ class _Data:
 
 
 def _short(text: str) -> str:
-    return text if len(text) <= 110 else text[:109] + "…"
+    return text if len(text) <= 80 else text[:79] + "…"

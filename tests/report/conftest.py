@@ -222,7 +222,7 @@ def make_report(**more) -> ReportData:
         "after": make_prediction(AFTER),
         "treatment_name": "Thick walls",
         "buying": make_buying(room=room),
-        "panels": tuple(placed_panels(option, catalogue)),
+        "panels": tuple(placed_panels(option, catalogue, room)),
         "acceptance": judge(AFTER * 1.02, 0.01 * AFTER, make_target().low, make_target().high),
         "product_sources": (("wool-100", "– .8 .8 .8 .8 .8 .8 .8", "invented"),),
         "bibliography": ("Invented handbook, first edition.",),

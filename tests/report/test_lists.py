@@ -7,7 +7,7 @@ import zipfile
 import openpyxl
 import pytest
 
-from planner.report.buying import number_range, panel_numbers, placed_panels
+from planner.report.buying import number_ranges, placed_panels
 from planner.report.list_formats import list_document, to_csv, to_text, to_xlsx
 from planner.report.printing import write_list
 
@@ -26,8 +26,8 @@ HOSTILE = [
 def test_every_line_and_the_total_stand_in_the_text(sample):
     text = to_text(sample.buying(build_ups=LAYERS))
     for words in (
-        "P1–P7", "pieces 7", "2 × pack of 4", "5.04 m²", "100 mm thick", "45.5 kg", "240.00 EUR",
-        "spare 12 %", "P8–P11", "151.00 EUR", "spare 33 %", "4.20 m²", "59.70 EUR",
+        "P5–P11", "pieces 7", "2 × pack of 4", "5.04 m²", "100 mm thick", "45.5 kg", "240.00 EUR",
+        "spare 12 %", "P1–P4", "151.00 EUR", "spare 33 %", "4.20 m²", "59.70 EUR",
         f"Total: {TOTAL} EUR (incomplete)", "12.12 m²", "price invented", "price missing",
         "second retentions", "Porous board", "no fire class declared",
     ):  # fmt: skip
@@ -91,19 +91,35 @@ def test_identical_lists_give_identical_files(sample, tmp_path):
         assert paths[0].read_bytes() == paths[1].read_bytes()
 
 
-def test_panel_numbers_follow_the_list_and_reach_the_drawings(sample):
-    option = sample.option()
-    numbers = panel_numbers(option)
-    assert numbers == {
-        "wool-100": [f"P{n}" for n in range(1, 8)],
-        "cloud-50": [f"P{n}" for n in range(8, 12)],
-    }
-    placed = placed_panels(option, sample.catalogue())
-    assert {panel.number for panel in placed} == {n for own in numbers.values() for n in own}
+def test_panel_numbers_are_the_same_on_the_list_and_on_the_drawings(sample):
+    """Ceiling, back, front: the order of the room's surfaces, then left to right, bottom to top."""
+    option, room, catalogue = sample.option(), sample.room(), sample.catalogue()
+    placed = placed_panels(option, catalogue, room)
+    assert [panel.number for panel in placed] == [f"P{n}" for n in range(1, 12)]
+    assert [panel.surface for panel in placed] == ["ceiling"] * 4 + ["back"] * 2 + ["front"] * 5
     places = [tuple(r) for item in option.items for r in item.placement]
     drawn = [(p.left, p.bottom, p.width, p.height) for p in placed]
     assert sorted(drawn) == sorted(places)
-    assert number_range(["P3"]) == "P3"
+    lines = {line.item: line.panels for line in sample.buying().lines}
+    assert lines["Invented wool-100"] == "P5–P11"
+    assert lines["Invented cloud-50"] == "P1–P4"
+    assert number_ranges([3]) == "P3"
+    assert number_ranges([1, 2, 5, 3, 9]) == "P1–P3, P5, P9"
+
+
+def test_panel_numbers_are_those_of_the_placement(sample):
+    """Laid out by the placement, written into the option and read back: the same numbers."""
+    placement = pytest.importorskip("planner.treat.placement")
+    bare = sample.option()
+    bare = bare.model_copy(
+        update={"items": tuple(i.model_copy(update={"placement": ()}) for i in bare.items[:3])}
+    )
+    laid = placement.place(sample.room(), bare, sample.catalogue())
+    drawn = placed_panels(laid.in_option(bare), sample.catalogue(), sample.room())
+    assert laid.panels
+    for panel, own in zip(laid.panels, drawn, strict=True):
+        assert (f"P{panel.number}", panel.surface) == (own.number, own.surface)
+        assert panel.rectangle == pytest.approx((own.left, own.bottom, own.width, own.height))
 
 
 def test_rented_room_gets_no_fixings(sample):
