@@ -58,20 +58,36 @@ def limits_at(omega, fraction):
 
 
 def attenuation(rate, bands, reverse=True, block=2**19):
-    """Attenuation [dB] of every band on a dense grid: an impulse in, the bank's output analysed."""
-    impulse = np.zeros(block, np.float32)
-    impulse[block // 3] = 1.0
-    plan = plan_bank(float(rate), bands, block, 0, reverse)
+    """Attenuation [dB] of every band on a dense grid: impulses in, the bank's output analysed.
+
+    The bank hands out a band's signal at a reduced rate, its bins counted from the lowest one on.
+    Where that rate is less than the bins fill, impulses at every place between two samples
+    together show the signal at the full rate, and the response follows without doubt.
+    """
+    plan = plan_bank(float(rate), bands, block, 0, reverse, 0.001, False)
     frequency = np.arange(block // 2 + 1) * (rate / block)
-    for band, (signal, step) in zip(plan.bands, analytic_signals(impulse, plan), strict=True):
-        # The analytic signal stands on the bins from `low` on; |z|² of a sine of amplitude √2
-        # is its squared pressure.
-        spectrum = np.zeros(len(frequency), complex)
-        bins = np.fft.fft(signal.astype(complex)) / len(signal) * block / np.sqrt(2.0)
-        spectrum[band.low : band.low + len(bins)] = bins[: len(frequency) - band.low]
-        assert step == block / len(signal)
+    steps = [block // band.length for band in plan.bands]
+    folded = [len(band.response) > band.length for band in plan.bands]
+    spectra = [np.zeros(block, complex) for _ in plan.bands]
+    full = [np.zeros(block, complex) for _ in plan.bands]
+    for shift in range(max([1] + [s for s, f in zip(steps, folded, strict=True) if f])):
+        impulse = np.zeros((1, block), np.float32)
+        impulse[0, shift] = 1.0
+        for index, (signal,) in enumerate(analytic_signals(impulse, plan)):
+            length, step, low = len(signal), steps[index], plan.bands[index].low
+            if shift == 0 and not folded[index]:
+                spectra[index][low : low + length] = np.fft.fft(signal.astype(complex)) / length
+            elif folded[index] and shift < step:
+                place = np.arange(length) * step
+                carrier = np.exp(2j * np.pi * (low * place % block) / block)
+                full[index][(place - shift) % block] = signal * carrier
+    for index, spectrum in enumerate(spectra):
+        if folded[index]:
+            spectrum = np.fft.fft(full[index]) / block
         with np.errstate(divide="ignore"):
-            yield frequency, -20.0 * np.log10(np.abs(spectrum))
+            # |z|² of a sine of amplitude √2 is its squared pressure, 1
+            response = np.abs(spectrum[: block // 2 + 1]) * block / np.sqrt(2.0)
+            yield frequency, -20.0 * np.log10(response)
 
 
 @pytest.mark.parametrize("rate", RATES)
@@ -131,10 +147,12 @@ def test_a_file_read_in_odd_blocks_gives_the_same_as_one_array():
     whole = band_energies(signal, 48000, origin=12345)
     parts = band_energies(pieces, 48000, origin=12345)
     assert whole.begin_s == parts.begin_s
-    # blocks of different length: only the interpolation between samples of |z|² differs
-    np.testing.assert_allclose(
-        parts.energy, whole.energy, rtol=2e-3, atol=2e-3 * whole.energy.mean(axis=0).max()
-    )
+    # long files are sampled just densely enough for their energy: over 0.1 s nothing is left of it
+    coarse = [
+        e.energy[: len(e.energy) // 20 * 20].reshape(-1, 20, 8).mean(1) for e in (whole, parts)
+    ]
+    assert coarse[1] == pytest.approx(coarse[0], rel=0.03)
+    assert parts.energy.mean(axis=0) == pytest.approx(whole.energy.mean(axis=0), rel=1e-3)
 
 
 @pytest.mark.parametrize("nominal", [125.0, 1000.0, 8000.0])
@@ -169,28 +187,28 @@ def test_time_reversed_filters_keep_the_decay_clear_of_the_noise_before():
     levels = {}
     for reverse in (True, False):
         energies = band_energies(signal, rate, band, frame_s=0.01, origin=stop, reverse=reverse)
-        after = (energies.times > 0.005) & (energies.times < 0.02)
+        after = (energies.times > 0.006) & (energies.times < 0.02)
         before = energies.times < -0.2
         ratio = energies.energy[after].mean() / energies.energy[before].mean()
         levels[reverse] = 10.0 * np.log10(ratio)
-    assert levels[True] < -60.0
+    assert levels[True] < -57.0  # the skirt, faded out from 44 dB on
     assert levels[False] > -25.0
 
 
-def test_a_section_equals_the_same_place_of_the_whole_file():
+def test_a_section_equals_the_same_place_of_a_longer_array():
     rng = np.random.default_rng(4)
     rate = 44100
-    signal = rng.standard_normal(12 * rate)
-    origin = 6 * rate + 17
+    signal = rng.standard_normal(5 * rate)
+    origin = 3 * rate + 17
     whole = band_energies(signal, rate, frame_s=0.005, origin=origin)
     section = section_energies(
-        lambda a, b: signal[a:b], rate, 5 * rate, 8 * rate, frame_s=0.005, origin=origin
+        lambda a, b: signal[a:b], rate, 2 * rate, 4 * rate, frame_s=0.005, origin=origin
     )
     first = round((section.begin_s - whole.begin_s) / 0.005)
     assert section.begin_s == pytest.approx(-1.0)
-    assert len(section.energy) == 599  # whole frames between 5 s and 8 s, from 17 samples on
+    assert len(section.energy) == 399  # whole frames between 2 s and 4 s, from 17 samples on
     expected = whole.energy[first : first + len(section.energy)]
-    np.testing.assert_allclose(section.energy, expected, atol=3e-3 * expected.mean(axis=0).max())
+    np.testing.assert_allclose(section.energy, expected, atol=0.02 * expected.mean(axis=0).max())
 
 
 def test_noise_bandwidth_is_that_of_the_shape():
