@@ -7,13 +7,16 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.treat.optimise import Task, best, describe
+from planner.treat.optimise import Task, describe
 from planner.treat.programme import Status
-from planner.treat.stages import Clock, Found, cheapest
+from planner.treat.stages import Clock, Found, cheapest, closest
 from planner.treat.suggestion import Suggestion
 from planner.treat.windows import Windows, windows
 
 Array = NDArray[np.float64]
+
+FRONT_GAP = 0.01
+"""Points between the ends are this near to the least cost. [-]"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,15 +51,20 @@ def front(task: Task, *, points: int = 8, time_limit: float = 10.0) -> tuple[Fro
         From the nearest and dearest to the cheapest, each different from the last.
     """
     clock = Clock(time_limit)
-    nearest = _point(task, best(task.problem, task.windows, task.judged, clock, 0.0))
+    first = cheapest(task.problem, task.windows, task.judged, Clock(clock.left / 2))
+    if first is None:
+        first = closest(task.problem, task.windows, task.judged, Clock(clock.left / 2))
+    nearest = _point(task, first)
     nothing = _point(task, Found(Status.OPTIMAL, np.zeros(len(task.problem.choices)), 0.0))
     found = [nearest]
     steps = np.linspace(nearest.deviation_s, nothing.deviation_s, max(points, 2))[1:-1]
     for step in steps:
         if clock.left <= 0.0 or found[-1].cost <= 0.0:
             break
-        share = Clock(max(clock.left / 2, 0.2))
-        answer = cheapest(task.problem, widened(task, float(step)), task.judged, share, gap=1e-3)
+        share = Clock(min(max(clock.left / 3, 0.2), 1.5))
+        answer = cheapest(
+            task.problem, widened(task, float(step)), task.judged, share, gap=FRONT_GAP
+        )
         if answer is not None:
             found.append(_point(task, answer))
     found.append(nothing)

@@ -20,7 +20,7 @@ from planner.room.surfaces import RoomSurfaces
 from planner.treat.directions import Directions, directions_of
 from planner.treat.option import treated
 from planner.treat.programme import Cut
-from planner.treat.stages import Clock, cheapest
+from planner.treat.stages import Clock, Found, cheapest, simplest
 from planner.treat.suggestion import Opinion, SecondOpinion, Suggestion
 from planner.treat.windows import windows
 
@@ -111,7 +111,7 @@ def _corrected(
     gap: float,
 ) -> Suggestion | None:
     """Solve again with corrected limits until the others agree; None where that does not happen."""
-    from planner.treat.optimise import describe, times_by
+    from planner.treat.optimise import times_by
 
     cuts: list[Cut] = []
     main = task.names[0]
@@ -131,12 +131,31 @@ def _corrected(
         amounts = found.amounts
         room = treated(task.surfaces, task.problem.option(amounts, task.name), task.catalogue)
         opinions = opinions_on(task, room, directional, simulation)
-        if not any(o.outside_hz for o in opinions if o.method in DECIDING):
-            named = replace(task, name=f"{task.name}, agreed by {_names(opinions)}")
-            answer = describe(named, found)
-            agreed = SecondOpinion(opinions, True, f"{_names(opinions)} agrees")
-            return replace(answer, second_opinion=agreed) if answer.meets_target else None
+        if _agree(opinions):
+            tidy = simplest(task.problem, limits, task.judged, found, clock, cuts=cuts, axial=axial)
+            return _described(task, tidy, directional, simulation) or _described(
+                task, found, directional, simulation
+            )
     return None
+
+
+def _agree(opinions: tuple[Opinion, ...]) -> bool:
+    return not any(o.outside_hz for o in opinions if o.method in DECIDING)
+
+
+def _described(
+    task: Task, found: Found, directional: bool, simulation: Predictor | None
+) -> Suggestion | None:
+    """The list as a suggestion, where formula and other predictors see it inside the target."""
+    from planner.treat.optimise import describe
+
+    room = treated(task.surfaces, task.problem.option(found.amounts, task.name), task.catalogue)
+    opinions = opinions_on(task, room, directional, simulation)
+    answer = describe(replace(task, name=f"{task.name}, agreed by {_names(opinions)}"), found)
+    if not answer.meets_target or not _agree(opinions):
+        return None
+    agreed = SecondOpinion(opinions, True, f"{_names(opinions)} agrees")
+    return replace(answer, second_opinion=agreed)
 
 
 def directional_cuts(task: Task, directions: Directions, amounts: Array) -> list[Cut]:

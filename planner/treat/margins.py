@@ -31,6 +31,14 @@ ROUNDS = 16
 """Solves at most."""
 RESERVE = 0.01
 """Asked for on top, so that fresh draws agree as well: their sampling error. [-]"""
+KEPT = 8
+"""Tangents kept in each window: those at the last lists. More make the programme slow."""
+REPEATS = 2
+"""Solves with one z to learn σ before a larger one is tried."""
+CLOSE = 0.015
+"""A probability this little above what is wanted ends the search. [-]"""
+SEARCH_GAP = 0.005
+"""Relative cost difference that a search for z does not look behind. [-]"""
 NEAR = 0.03
 """Tangents that miss σ by less than this share describe it well enough. [-]"""
 
@@ -92,28 +100,90 @@ def robustly(
     likeliest: tuple[float, Found] = (likely, nominal)
     reached: Found | None = None
     tangents = _tangents(problem, windows, nominal.amounts, unknown)
+    whole = clock.left
     low, high, z = 0.0, float("inf"), NormalDist().inv_cdf(0.5 + confidence / 2)
+    repeats = 0
     for _ in range(ROUNDS):
         cuts = [cut for tangent in tangents for cut in _rows(problem, tangent, z, judged)]
-        found = cheapest(problem, windows, judged, clock, gap=gap, cuts=cuts)
+        share = Clock(min(clock.left, 0.2 * whole))
+        found = cheapest(problem, windows, judged, share, gap=max(gap, SEARCH_GAP), cuts=cuts)
         if found is None:
-            high = z
+            high, likely = z, 1.0
         else:
             likely, unknown = judge(found.amounts)
             likeliest = max(likeliest, (likely, found), key=lambda pair: pair[0])
             more = _tangents(problem, windows, found.amounts, unknown)
             described = _is_described(tangents, more, found.amounts)
-            tangents += more
+            tangents = tangents[-KEPT * len(windows) :] + more
             if likely >= wanted:
                 high, reached = z, _cheaper(problem, reached, found)
-            elif described:
-                low = z
+                if likely < wanted + CLOSE:
+                    break
+            elif described or repeats == REPEATS:
+                low, repeats = z, 0
             else:
+                repeats += 1
                 continue
-        z = z * 1.5 if np.isinf(high) else 0.5 * (low + high)
-        if high - low < 0.03 or clock.left <= 0.0:
+        if high - low < 0.05 or clock.left <= 0.0:
             break
-    return reached or replace(likeliest[1], status=Status.INFEASIBLE)
+        z = _next(z, low, high, likely, wanted)
+    if reached is None:
+        return replace(likeliest[1], status=Status.INFEASIBLE)
+    return _thinned(problem, windows, judged, reached, judge, wanted)
+
+
+def _thinned(
+    problem: Problem,
+    windows: Sequence[Windows],
+    judged: NDArray[np.bool_],
+    found: Found,
+    judge: Judge,
+    wanted: float,
+) -> Found:
+    """The list without packs that the draws do not miss, the dearest tried first."""
+    if problem.covers or problem.limits.evenness is not None:
+        return found  # taking away could break these
+    amounts = found.amounts
+    for product in np.argsort(-problem.pack_price, kind="stable"):
+        while (fewer := _without_a_pack(problem, amounts, int(product))) is not None:
+            if not _inside(problem, windows, judged, fewer) or judge(fewer)[0] < wanted:
+                break
+            amounts = fewer
+    return replace(found, amounts=amounts)
+
+
+def _without_a_pack(problem: Problem, amounts: Array, product: int) -> Array | None:
+    """Just so many pieces fewer that a pack less is needed, from the longest lines."""
+    packs = problem.packs(amounts)[product]
+    if packs < 1:
+        return None
+    fewer = amounts.copy()
+    mine = np.flatnonzero(problem.product_of == product)
+    while problem.packs(fewer)[product] >= packs:
+        line = mine[int(np.argmax(fewer[mine]))]
+        step = min(1.0, fewer[line])
+        fewer[line] -= step
+    return fewer
+
+
+def _inside(
+    problem: Problem, windows: Sequence[Windows], judged: NDArray[np.bool_], amounts: Array
+) -> bool:
+    for window in windows:
+        area = problem.start(window.formula) + amounts @ problem.effect(window.formula)
+        if np.any(judged & ((area < window.low) | (area > window.high))):
+            return False
+    return True
+
+
+def _next(z: float, low: float, high: float, likely: float, wanted: float) -> float:
+    """The margin that would give the wanted probability if one number ruled it, kept in between."""
+    normal = NormalDist()
+    step = normal.inv_cdf(0.5 + wanted / 2) - normal.inv_cdf(0.5 + min(likely, 0.999) / 2)
+    guess = z + 1.1 * step
+    if low < guess < high and likely < 1.0:
+        return guess
+    return 1.3 * z if np.isinf(high) else 0.5 * (low + high)
 
 
 def _tangents(

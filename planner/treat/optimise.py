@@ -403,8 +403,13 @@ _DROPPED = {
 
 
 def _confidence_warning(task: Task, found: Found) -> list[str]:
-    if task.confidence is None or found.status is not Status.INFEASIBLE:
+    if task.confidence is None:
         return []
+    if found.status is not Status.INFEASIBLE:
+        return [
+            "the cheapest list for margins that reach the confidence asked for: its gap is proven for "
+            "those margins"
+        ]
     return [
         f"no list was found that meets the target with a probability of {task.confidence:.0%}; this "
         "is the likeliest seen. Measuring the room narrows what is not known"

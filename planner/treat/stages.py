@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import time
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -25,8 +25,8 @@ from planner.treat.windows import Windows
 
 Array = NDArray[np.float64]
 
-SIMPLER_NODES = 300
-"""Branches spent on making a list of proven cost simpler."""
+SIMPLER_NODES = 500
+"""Branches spent on each way of making a list of proven cost simpler."""
 SIMPLER_SECONDS = 1.5
 """[s]"""
 
@@ -166,35 +166,46 @@ def simplest(
     judged: NDArray[np.bool_],
     found: Found,
     clock: Clock,
+    *,
+    cuts: Sequence[Cut] = (),
+    axial: Axial | None = None,
 ) -> Found:
     """Of the lists that cost no more, one with fewer products, then fewer lines.
 
-    Spends a small, fixed effort: the list it is given is kept where none simpler turns up.
+    Spends a small, fixed effort on each; the list it is given is kept where none simpler turns up.
     """
     if found.status is not Status.OPTIMAL or not np.any(found.amounts > 0):
         return found
-    built = treatment(problem, windows, judged, count_products=True)
-    programme = built.programme
-    cost = problem.cost(found.amounts)
-    numbers, prices = built.price
-    programme.row((numbers, prices), high=_slightly_above(cost))
-    lines = programme.unknowns(len(built.amounts), high=1.0, whole=True)
-    for number, choice in enumerate(problem.choices):
-        programme.row((built.amounts[number], 1.0), (lines[number], -choice.upper), high=0.0)
-    outcome = programme.solve(
-        (built.used, 100.0),
-        (lines, 1.0),
-        seconds=min(SIMPLER_SECONDS, clock.left),
-        nodes=SIMPLER_NODES,
-    )
-    if outcome.values is None:
-        return found
-    amounts = built.amounts_of(outcome)
-    if _length(problem, amounts) < _length(problem, found.amounts) and problem.cost(
-        amounts
-    ) <= _slightly_above(cost):
-        return Found(found.status, amounts, found.gap, found.dropped)
-    return found
+    best = found.amounts
+    for step in (_fewer_products, _fewer_lines):
+        built = treatment(problem, windows, judged, count_products=True, cuts=cuts, axial=axial)
+        built.programme.row(built.price, high=_slightly_above(problem.cost(best)))
+        outcome = step(built, best, min(SIMPLER_SECONDS, clock.left))
+        if outcome.values is None:
+            continue
+        amounts = built.amounts_of(outcome)
+        if _length(problem, amounts) < _length(problem, best) and problem.cost(
+            amounts
+        ) <= _slightly_above(problem.cost(best)):
+            best = amounts
+    return replace(found, amounts=best)
+
+
+def _fewer_products(built: Treatment, best: Array, seconds: float) -> Outcome:
+    return built.programme.solve((built.used, 1.0), seconds=seconds, nodes=SIMPLER_NODES)
+
+
+def _fewer_lines(built: Treatment, best: Array, seconds: float) -> Outcome:
+    """With the products of the list at hand and no others."""
+    asked, programme = built.problem, built.programme
+    kept = np.isin(asked.product_of, asked.product_of[best > 1e-9])
+    for number in np.flatnonzero(~kept):
+        programme.high[int(built.amounts[number])] = 0.0
+    lines = programme.unknowns(int(kept.sum()), high=1.0, whole=True)
+    for line, number in zip(lines, np.flatnonzero(kept), strict=True):
+        upper = asked.choices[number].upper
+        programme.row((built.amounts[number], 1.0), (int(line), -upper), high=0.0)
+    return programme.solve((lines, 1.0), seconds=seconds, nodes=SIMPLER_NODES)
 
 
 def _length(problem: Problem, amounts: Array) -> tuple[int, int]:

