@@ -254,7 +254,7 @@ def _rows(room: Room, gross: dict[str, float]) -> Iterator[tuple[Part, float, st
         extra.append((part, opening.area, f"[[opening]] {number}, material"))
         free[opening.wall] -= opening.area
     for number, patch in enumerate(room.patches, 1):
-        name = unique(f"{patch.material} on {patch.on}")
+        name = unique(f"patch on {patch.on}")
         part = Part(name, patch.on, patch.material, "patch", normals[patch.on])
         extra.append((part, patch.covered, f"[[patch]] {number}, material"))
         free[patch.on] -= patch.covered
