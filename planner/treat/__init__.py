@@ -11,7 +11,7 @@ from typing import Any
 
 _PLACE = {
     "Catalogue": "catalogue",
-    "Cover": "problem",
+    "Cover": "covers",
     "Option": "option",
     "OptionItem": "option",
     "Product": "catalogue",
@@ -25,6 +25,7 @@ _PLACE = {
     "shopping_list": "shopping",
     "second_best": "alternatives",
     "suggest": "optimise",
+    "task_for": "task",
     "to_csv": "shopping",
     "to_text": "shopping",
     "treated": "option",

@@ -7,10 +7,11 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.treat.optimise import Task, describe
+from planner.treat.describing import describe
 from planner.treat.programme import Status
 from planner.treat.stages import Clock, Found, cheapest, closest
 from planner.treat.suggestion import Suggestion
+from planner.treat.task import Task
 from planner.treat.windows import Windows, windows
 
 Array = NDArray[np.float64]

@@ -10,22 +10,20 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
-from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
 from planner.bands import OCTAVES
 from planner.room.surfaces import RoomSurfaces
+from planner.treat.describing import describe
 from planner.treat.directions import Directions, directions_of
 from planner.treat.option import treated
-from planner.treat.programme import Cut
 from planner.treat.stages import Clock, Found, cheapest, simplest
 from planner.treat.suggestion import Opinion, SecondOpinion, Suggestion
+from planner.treat.task import Task, times_by
+from planner.treat.treatment import Cut
 from planner.treat.windows import windows
-
-if TYPE_CHECKING:
-    from planner.treat.optimise import Task
 
 Array = NDArray[np.float64]
 Predictor = Callable[[RoomSurfaces], Array]
@@ -79,8 +77,6 @@ def opinions_on(
     task: Task, room: RoomSurfaces, directional: bool, simulation: Predictor | None
 ) -> tuple[Opinion, ...]:
     """The times that other predictors give a room."""
-    from planner.treat.optimise import times_by
-
     times: dict[str, Array] = {}
     if directional:
         asked = ("fitzroy", "arau_puchades")
@@ -111,8 +107,6 @@ def _corrected(
     gap: float,
 ) -> Suggestion | None:
     """Solve again with corrected limits until the others agree; None where that does not happen."""
-    from planner.treat.optimise import times_by
-
     cuts: list[Cut] = []
     main = task.names[0]
     directions = directions_of(task) if directional else None
@@ -147,8 +141,6 @@ def _described(
     task: Task, found: Found, directional: bool, simulation: Predictor | None
 ) -> Suggestion | None:
     """The list as a suggestion, where formula and other predictors see it inside the target."""
-    from planner.treat.optimise import describe
-
     room = treated(task.surfaces, task.problem.option(found.amounts, task.name), task.catalogue)
     opinions = opinions_on(task, room, directional, simulation)
     answer = describe(replace(task, name=f"{task.name}, agreed by {_names(opinions)}"), found)

@@ -2,14 +2,9 @@
 
 from __future__ import annotations
 
-import csv
-import io
-import math
 import re
 import tomllib
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
-from difflib import get_close_matches
+from collections.abc import Sequence
 from typing import cast
 
 import numpy as np
@@ -24,11 +19,8 @@ from planner.absorption.library import (
 from planner.bands import OCTAVES
 from planner.errors import CatalogueError, InputError
 from planner.treat.catalogue import FREE, Product, Unit
+from planner.treat.cells import Row, decoded, number_of, rows_of
 
-LARGEST_FILE = 2_000_000
-"""A catalogue beyond this is something else. [byte]"""
-MOST_PRODUCTS = 2_000
-"""More rows than this are not weighed against each other."""
 FEWEST_BANDS = 3
 """Coefficients needed; a single-number rating does not say what happens in a band."""
 
@@ -45,46 +37,6 @@ _UNITS = {
     "m2": "m2", "m²": "m2", "sqm": "m2",
     "item": "item", "items": "item",
 }  # fmt: skip
-_DELIMITERS = ",;\t"
-
-
-@dataclass(frozen=True, slots=True)
-class _Row:
-    """Cells of one product by column, and where they stand."""
-
-    cells: Mapping[str, str]
-    number: int
-    file: str
-    decimal_comma: bool
-
-    def wrong(self, column: str, what: str, cure: str | None = None) -> CatalogueError:
-        name = self.cells.get("id", "")[:40]
-        row = f"row {self.number} ({name})" if name else f"row {self.number}"
-        return CatalogueError(what, file=self.file, where=f"{row}, column {column}", cure=cure)
-
-    def text(self, column: str, longest: int = 300) -> str:
-        value = self.cells.get(column, "")
-        if len(value) > longest:
-            raise self.wrong(column, f"holds {len(value)} characters", f"At most {longest}.")
-        if any(ord(sign) < 32 for sign in value):
-            raise self.wrong(column, "holds control characters", "Write plain text on one line.")
-        return value
-
-    def number_in(
-        self, column: str, low: float, high: float, unit: str, hint: str = ""
-    ) -> float | None:
-        text = self.cells.get(column, "")
-        if not text:
-            return None
-        value = _number(text, decimal_comma=self.decimal_comma)
-        if value is None:
-            raise self.wrong(
-                column, f"{text[:40]!r} is not a number", "Write it like 12.50, without a unit."
-            )
-        if not low <= value <= high:
-            cure = hint or f"It must lie from {low:g} to {high:g}."
-            raise self.wrong(column, f"{text[:40]} {unit} cannot be".replace("  ", " "), cure)
-        return value
 
 
 def products_from_bytes(raw: bytes, *, file: str) -> list[Product]:
@@ -102,7 +54,7 @@ def products_from_bytes(raw: bytes, *, file: str) -> list[Product]:
     CatalogueError
         With every wrong row up to the sixth, the first in full.
     """
-    rows = _rows(_decoded(raw, file), file)
+    rows = rows_of(decoded(raw, file), file, COLUMNS)
     products: list[Product] = []
     wrong: list[CatalogueError] = []
     seen: dict[str, int] = {}
@@ -135,108 +87,7 @@ def _together(wrong: Sequence[CatalogueError], file: str) -> CatalogueError:
     return CatalogueError(first.what, file=file, where=first.where, cure=cure)
 
 
-def _decoded(raw: bytes, file: str) -> str:
-    if len(raw) > LARGEST_FILE:
-        raise CatalogueError(
-            f"is {len(raw) / 1e6:.1f} MB large", file=file, cure="A catalogue has a few kB."
-        )
-    encodings = ("utf-16",) if raw[:2] in (b"\xff\xfe", b"\xfe\xff") else ("utf-8-sig", "cp1252")
-    for encoding in encodings:
-        try:
-            text = raw.decode(encoding)
-        except UnicodeDecodeError:
-            continue
-        if "\0" not in text:
-            return text.replace("\r\n", "\n").replace("\r", "\n")
-    raise CatalogueError(
-        "is not a text file", file=file, cure="Save the table as CSV (UTF-8) and name that file."
-    )
-
-
-def _rows(text: str, file: str) -> list[_Row]:
-    lines = text.split("\n")
-    skipped = 0
-    while skipped < len(lines) and (not lines[skipped].strip() or lines[skipped].startswith("#")):
-        skipped += 1
-    if skipped == len(lines):
-        raise CatalogueError("is empty", file=file, cure="Its first row holds the headings.")
-    delimiter = max(_DELIMITERS, key=lines[skipped].count)
-    stream = io.StringIO("\n".join(lines[skipped:]))
-    reader = csv.reader(stream, delimiter=delimiter, strict=True)
-    rows: list[_Row] = []
-    try:
-        headings = _headings(next(reader), file)
-        for cells in reader:
-            number = reader.line_num + skipped
-            if not any(cell.strip() for cell in cells):
-                continue
-            rows.append(_row(cells, headings, number, file, delimiter != ","))
-            if len(rows) > MOST_PRODUCTS:
-                raise CatalogueError(
-                    f"holds more than {MOST_PRODUCTS} products",
-                    file=file,
-                    cure="Keep those you would really buy.",
-                )
-    except csv.Error as error:
-        raise CatalogueError(
-            f"is not a table: {error}",
-            file=file,
-            where=f"row {reader.line_num + skipped}",
-            cure='Check the quotation marks ("…") in that row.',
-        ) from error
-    return rows
-
-
-def _row(
-    cells: list[str], headings: Sequence[str], number: int, file: str, decimal_comma: bool
-) -> _Row:
-    if len(cells) > len(headings) and any(cell.strip() for cell in cells[len(headings) :]):
-        raise CatalogueError(
-            f"has {len(cells)} cells under {len(headings)} headings",
-            file=file,
-            where=f"row {number}",
-            cure="Put text that holds the separator in quotation marks.",
-        )
-    pairs = zip(headings, (cell.strip() for cell in cells), strict=False)
-    return _Row(dict(pairs), number, file, decimal_comma)
-
-
-def _headings(cells: Sequence[str], file: str) -> tuple[str, ...]:
-    names = tuple(cell.strip().lower().replace(" ", "_") for cell in cells)
-    for name in names:
-        if name not in COLUMNS:
-            near = get_close_matches(name, COLUMNS, n=1, cutoff=0.6)
-            raise CatalogueError(
-                f"{name[:40]!r} is not a column the planner knows"
-                if name
-                else "a heading is empty",
-                file=file,
-                where="headings",
-                cure=(f"Did you mean {near[0]!r}? " if near else "")
-                + f"Known: {', '.join(COLUMNS)}. Remarks go under 'note'.",
-            )
-        if names.count(name) > 1:
-            raise CatalogueError(
-                f"the column {name!r} stands there twice", file=file, where="headings"
-            )
-    if "id" not in names:
-        raise CatalogueError(
-            "has no column 'id'", file=file, where="headings", cure=f"Known: {', '.join(COLUMNS)}."
-        )
-    return names
-
-
-def _number(text: str, *, decimal_comma: bool) -> float | None:
-    """A plain decimal number, or None: no units, no thousands, nothing that is not finite."""
-    if decimal_comma and text.count(",") == 1 and "." not in text:
-        text = text.replace(",", ".")
-    if not re.fullmatch(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d{1,2})?", text, re.ASCII):
-        return None
-    value = float(text)
-    return value if math.isfinite(value) else None
-
-
-def _product(row: _Row) -> Product:
+def _product(row: Row) -> Product:
     name = row.text("id", 80)
     if not name:
         raise row.wrong("id", "is empty", "Give every product an id of its own.")
@@ -278,21 +129,21 @@ def _product(row: _Row) -> Product:
     )
 
 
-def _metres_hint(row: _Row, column: str) -> str:
-    value = _number(row.cells.get(column, ""), decimal_comma=row.decimal_comma)
+def _metres_hint(row: Row, column: str) -> str:
+    value = number_of(row.cells.get(column, ""), decimal_comma=row.decimal_comma)
     if value is not None and 50 <= value <= 20_000:
         return f"In metres, {value:g} mm are {value / 1000:g}."
     return ""
 
 
-def _unit(row: _Row) -> Unit:
+def _unit(row: Row) -> Unit:
     text = row.text("unit", 20).lower()
     if text not in _UNITS:
         raise row.wrong("unit", f"{text!r} is no unit of sale", "Use piece, m2 or item.")
     return cast(Unit, _UNITS[text])
 
 
-def _surfaces(row: _Row, unit: Unit) -> tuple[str, ...]:
+def _surfaces(row: Row, unit: Unit) -> tuple[str, ...]:
     words = [word for word in re.split(r"[;,|/\s]+", row.text("surfaces", 80).lower()) if word]
     if not words:
         return (FREE,) if unit == "item" else ("wall", "ceiling")
@@ -312,7 +163,7 @@ def _surfaces(row: _Row, unit: Unit) -> tuple[str, ...]:
     return tuple(dict.fromkeys(words))
 
 
-def _pack(row: _Row, unit: Unit) -> float:
+def _pack(row: Row, unit: Unit) -> float:
     pack = row.number_in("pack", 0.0, 100_000.0, "")
     if pack is None:
         return 1.0
@@ -323,7 +174,7 @@ def _pack(row: _Row, unit: Unit) -> float:
     return pack
 
 
-def _material(row: _Row, unit: Unit) -> Material | None:
+def _material(row: Row, unit: Unit) -> Material | None:
     """The row of the material library that this product is made of, where it names one."""
     name = row.text("material", 80)
     given = [column for column in BAND_COLUMNS if row.cells.get(column)]
@@ -351,9 +202,7 @@ def _material(row: _Row, unit: Unit) -> Material | None:
     return material
 
 
-def _agree(
-    row: _Row, material: Material | None, thickness: float | None, gap: float | None
-) -> None:
+def _agree(row: Row, material: Material | None, thickness: float | None, gap: float | None) -> None:
     """Coefficients hold for one thickness and one gap: refuse them at another."""
     if material is None:
         return
@@ -369,7 +218,7 @@ def _agree(
             )
 
 
-def _values(row: _Row, unit: Unit, material: Material | None) -> Coefficients:
+def _values(row: Row, unit: Unit, material: Material | None) -> Coefficients:
     try:
         if material is not None:
             return coefficients(material)
@@ -390,7 +239,7 @@ def _values(row: _Row, unit: Unit, material: Material | None) -> Coefficients:
         raise row.wrong(BAND_COLUMNS[0], error.what, error.cure) from error
 
 
-def _from_layers(row: _Row) -> Material:
+def _from_layers(row: Row) -> Material:
     cell = row.text("build_up", 2000)
     try:
         layers = tomllib.loads(f"build_up = {cell}")["build_up"]
@@ -415,13 +264,13 @@ def _from_layers(row: _Row) -> Material:
     return material
 
 
-def _alpha(row: _Row, unit: Unit) -> dict[int, float]:
+def _alpha(row: Row, unit: Unit) -> dict[int, float]:
     values: dict[int, float] = {}
     for hz, column in zip(OCTAVES, BAND_COLUMNS, strict=True):
         text = row.cells.get(column, "")
         most = 20.0 if unit == "item" else 1.6
         hint = "Leave the cell empty where nothing is known." if text.startswith("-") else ""
-        number = _number(text, decimal_comma=row.decimal_comma)
+        number = number_of(text, decimal_comma=row.decimal_comma)
         if unit != "item" and number is not None and 1.6 < number <= 160:
             hint = f"Coefficients are no percent: write {number / 100:g}."
         value = row.number_in(column, 0.0, most, "m²" if unit == "item" else "", hint)
@@ -436,12 +285,12 @@ def _alpha(row: _Row, unit: Unit) -> dict[int, float]:
     return values
 
 
-def _uncertainty(row: _Row) -> float | dict[int, float] | None:
+def _uncertainty(row: Row) -> float | dict[int, float] | None:
     cell = row.text("u", 120)
     if not cell:
         return None
     words = re.split(r"[;|\s]+", cell)
-    numbers = [_number(word, decimal_comma=row.decimal_comma) for word in words]
+    numbers = [number_of(word, decimal_comma=row.decimal_comma) for word in words]
     values = np.array([np.nan if number is None else number for number in numbers])
     if len(values) not in (1, len(OCTAVES)) or not np.all((values >= 0) & (values <= 1)):
         raise row.wrong(

@@ -3,17 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
 from planner.air import speed_of_sound
-from planner.treat.programme import Axial
+from planner.treat.task import Task
+from planner.treat.treatment import Axial
 from planner.treat.windows import CAP, air_m, decay_area, effective_volume
-
-if TYPE_CHECKING:
-    from planner.treat.optimise import Task
 
 Array = NDArray[np.float64]
 

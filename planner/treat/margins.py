@@ -18,8 +18,9 @@ from numpy.typing import NDArray
 
 from planner.treat.catalogue import Product
 from planner.treat.problem import Problem
-from planner.treat.programme import Cut, Status
+from planner.treat.programme import Status
 from planner.treat.stages import Clock, Found, cheapest
+from planner.treat.treatment import Cut
 from planner.treat.windows import Windows, counted
 
 Array = NDArray[np.float64]

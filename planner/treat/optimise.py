@@ -4,56 +4,31 @@ from __future__ import annotations
 
 import time
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from planner.air import Air
-from planner.bands import OCTAVES
-from planner.errors import OptionError
-from planner.predict.prediction import DRAWS, predict
 from planner.predict.targets import TargetLimits
 from planner.room.model import TreatmentLimits
 from planner.room.surfaces import RoomSurfaces
+from planner.treat.beyond import ask_others
 from planner.treat.catalogue import Catalogue
+from planner.treat.covers import Cover
+from planner.treat.describing import describe
 from planner.treat.margins import robustly
-from planner.treat.option import Option, item_area, treated
-from planner.treat.problem import Cover, Problem, problem
+from planner.treat.option import treated
+from planner.treat.problem import Problem
 from planner.treat.programme import Status
-from planner.treat.reasons import binding_limits, relaxations, short_bands
+from planner.treat.reasons import relaxations
 from planner.treat.robust import STEERING_DRAWS, area_spread, meets, time_draws
 from planner.treat.stages import Clock, Found, cheapest, closest, simplest
-from planner.treat.suggestion import SecondOpinion, SuggestedItem, Suggestion
-from planner.treat.windows import Windows, absorption_area, formulas, judged_bands, windows
+from planner.treat.suggestion import SecondOpinion, Suggestion
+from planner.treat.task import Task, task_for
+from planner.treat.windows import Windows, absorption_area
 
 Array = NDArray[np.float64]
-
-TOLERANCE = 1e-5
-"""Relative excess over a limit that counts as rounding. [-]"""
-
-
-@dataclass(frozen=True, slots=True)
-class Task:
-    """One room to be treated: what `suggest` was asked."""
-
-    surfaces: RoomSurfaces
-    air: Air
-    target: TargetLimits
-    catalogue: Catalogue
-    limits: TreatmentLimits
-    problem: Problem
-    judged: NDArray[np.bool_]
-    windows: tuple[Windows, ...]
-    room_draws: Array | None
-    confidence: float | None
-    name: str
-    seed: int
-
-    @property
-    def names(self) -> tuple[str, ...]:
-        """Formulas that must meet the target."""
-        return formulas(self.limits.formula)
 
 
 def suggest(
@@ -157,8 +132,6 @@ def suggest(
         more = relaxations(task.problem, task.windows, task.judged, catalogue, Clock(time_limit))
         answer = replace(answer, relaxations=more)
     if second_opinion or simulation is not None:
-        from planner.treat.beyond import ask_others
-
         opinion = ask_others(
             task, answer, found.amounts, second_opinion, simulation, Clock(time_limit), gap
         )
@@ -181,58 +154,6 @@ def _agreed(answer: Suggestion, opinion: SecondOpinion | None) -> Suggestion:
         gap=answer.gap,
         status=answer.status,
         second_opinion=others,
-    )
-
-
-def task_for(
-    surfaces: RoomSurfaces,
-    air: Air,
-    target: TargetLimits,
-    catalogue: Catalogue,
-    limits: TreatmentLimits | None = None,
-    *,
-    area_limits: Mapping[str, float] | None = None,
-    piece_limits: Mapping[tuple[str, str], float] | None = None,
-    covers: Sequence[Cover] = (),
-    confidence: float | None = None,
-    room_draws: Array | None = None,
-    include_assumed: bool = False,
-    name: str = "suggested",
-    seed: int = 1,
-) -> Task:
-    """What is asked, checked and turned into arrays; arguments as for `suggest`.
-
-    Raises
-    ------
-    CatalogueError, OptionError
-        As `suggest`.
-    """
-    if confidence is not None and not 0.5 <= confidence <= 0.99:
-        raise OptionError(
-            f"a confidence of {confidence:g} cannot be asked for",
-            cure="Write a probability from 0.5 to 0.99, for example 0.9.",
-        )
-    limits = limits or TreatmentLimits()
-    return Task(
-        surfaces=surfaces,
-        air=air,
-        target=target,
-        catalogue=catalogue,
-        limits=limits,
-        problem=problem(
-            surfaces,
-            catalogue,
-            limits,
-            area_limits=area_limits,
-            piece_limits=piece_limits,
-            covers=covers,
-        ),
-        judged=judged_bands(target, surfaces, include_assumed=include_assumed),
-        windows=windows(surfaces, air, target.low, target.high, formulas(limits.formula)),
-        room_draws=room_draws,
-        confidence=confidence,
-        name=name,
-        seed=seed,
     )
 
 
@@ -284,133 +205,3 @@ def best(
     if found is None:
         return closest(asked, limits, judged, clock)
     return simplest(asked, limits, judged, found, clock)
-
-
-def describe(task: Task, found: Found) -> Suggestion:
-    """The amounts found as a suggestion, checked with the predictor."""
-    option = task.problem.option(found.amounts, task.name)
-    room = treated(task.surfaces, option, task.catalogue)
-    methods = times_by(task, room, ("sabine", "eyring"))
-    main = task.names[0]
-    untreated = times_by(task, task.surfaces, (main,))[main]
-    deviation = max(outside_by(methods[name], task.target, task.judged) for name in task.names)
-    times = time_draws(
-        room, task.air, task.names, count=DRAWS, seed=task.seed, room_draws=task.room_draws
-    )
-    inside = meets(times, task.target, task.judged)
-    status = found.status
-    if deviation > 0 and status is Status.OPTIMAL:
-        status = Status.INFEASIBLE
-    return Suggestion(
-        status=status.value,
-        option=option,
-        items=_items(option, task.catalogue),
-        cost=task.problem.cost(found.amounts),
-        currency=task.problem.currency if task.problem.is_priced else "m2",
-        predicted=methods[main],
-        methods=methods,
-        untreated=untreated,
-        target_low=np.asarray(task.target.low, float),
-        target_high=np.asarray(task.target.high, float),
-        judged_hz=_hz(task.judged),
-        assumed_hz=room.assumed_hz,
-        probability=float(np.mean(inside.all(axis=1))),
-        band_probability=inside.mean(axis=0),
-        confidence=task.confidence,
-        gap=found.gap,
-        deviation_s=deviation,
-        short_bands=short_bands(
-            task.problem, task.windows, task.judged, found.amounts, methods, task.target
-        )
-        if deviation > 0
-        else (),
-        binding=binding_limits(task.problem, found.amounts),
-        warnings=_warnings(task, found, room),
-    )
-
-
-def times_by(task: Task, room: RoomSurfaces, names: Sequence[str]) -> dict[str, Array]:
-    """Reverberation times of a room by the predictor's formulas, ``(band,)`` each. [s]."""
-    methods = predict(room, task.air, task.target, methods=names, draws=0).methods
-    return {name: methods[name] for name in names}
-
-
-def outside_by(times: Array, target: TargetLimits, judged: NDArray[np.bool_]) -> float:
-    """Farthest that a judged band lies outside its limits, 0 where all are inside. [s]."""
-    low = np.where(judged & np.isfinite(target.low), target.low, 0.0)
-    high = np.where(judged & np.isfinite(target.high), target.high, np.inf)
-    over = np.where(times > high * (1 + TOLERANCE), times - high, 0.0)
-    under = np.where(times < low * (1 - TOLERANCE), low - times, 0.0)
-    return float(np.max(np.maximum(over, under)))
-
-
-def _items(option: Option, catalogue: Catalogue) -> tuple[SuggestedItem, ...]:
-    return tuple(
-        SuggestedItem(
-            item.product,
-            catalogue.find(item.product).description,
-            item.surface,
-            item.count,
-            item_area(item, catalogue.find(item.product)),
-        )
-        for item in option.items
-    )
-
-
-def _hz(bands: NDArray[np.bool_]) -> tuple[int, ...]:
-    return tuple(hz for hz, flag in zip(OCTAVES, bands, strict=True) if flag)
-
-
-def _warnings(task: Task, found: Found, room: RoomSurfaces) -> tuple[str, ...]:
-    said = list(task.problem.warnings)
-    limited = np.isfinite(task.target.low) | np.isfinite(task.target.high)
-    unjudged = _hz(limited & ~task.judged)
-    if unjudged:
-        said.append(
-            f"{', '.join(str(hz) for hz in unjudged)} Hz: coefficients are assumed there, so the "
-            "band is predicted but does not decide"
-        )
-    if not task.judged.any():
-        said.append("no band can be judged: nothing was asked of the treatment")
-    products = sorted(
-        {
-            hz
-            for hz in _hz(task.judged)
-            if hz in room.assumed_hz and hz not in task.surfaces.assumed_hz
-        }
-    )
-    if products:
-        said.append(
-            f"{', '.join(str(hz) for hz in products)} Hz: a chosen product's coefficient is assumed"
-        )
-    said += [_DROPPED[name] for name in found.dropped]
-    said += _confidence_warning(task, found)
-    if found.status is Status.TIME_LIMIT:
-        said.append(
-            "the time was up before this was proven the cheapest"
-            if np.isfinite(found.gap)
-            else "the time was up before a list inside the target was found or ruled out"
-        )
-    if any(product.price_is_invented for product in task.problem.products):
-        said.append("prices are invented: put your own into a catalogue")
-    return tuple(said)
-
-
-_DROPPED = {
-    "covers": "the first reflections cannot be covered within the other limits",
-    "evenness": "the axes cannot be made as even as asked within the other limits",
-}
-
-
-def _confidence_warning(task: Task, found: Found) -> list[str]:
-    if task.confidence is None:
-        return []
-    if found.status is not Status.INFEASIBLE:
-        return [
-            "the cheapest list for margins that reach the confidence asked for: its gap is proven for "
-            "those margins"
-        ]
-    return [
-        f"no list was found that meets the target with a probability of {task.confidence:.0%}; this "
-        "is the likeliest seen. Measuring the room narrows what is not known"
-    ]

@@ -10,10 +10,12 @@ from numpy.typing import NDArray
 from planner.bands import OCTAVES
 from planner.predict.targets import TargetLimits
 from planner.treat.catalogue import Catalogue
-from planner.treat.problem import Problem, problem
-from planner.treat.programme import Ease, Status, treatment
+from planner.treat.choosing import problem
+from planner.treat.problem import Problem
+from planner.treat.programme import Status
 from planner.treat.stages import Clock, cheapest
 from planner.treat.suggestion import Relaxation, ShortBand
+from planner.treat.treatment import Ease, treatment
 from planner.treat.windows import Windows
 
 Array = NDArray[np.float64]

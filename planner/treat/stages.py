@@ -10,17 +10,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.treat.problem import Problem
-from planner.treat.programme import (
-    MOST_SHORT,
-    SLACK,
-    Axial,
-    Cut,
-    Ease,
-    Outcome,
-    Status,
-    Treatment,
-    treatment,
-)
+from planner.treat.programme import MOST_SHORT, SLACK, Outcome, Status
+from planner.treat.treatment import Axial, Cut, Ease, Treatment, treatment
 from planner.treat.windows import Windows
 
 Array = NDArray[np.float64]

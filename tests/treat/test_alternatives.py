@@ -11,7 +11,8 @@ from planner.air import Air
 from planner.room.model import TreatmentLimits
 from planner.treat.alternatives import front, second_best
 from planner.treat.catalogue import Catalogue
-from planner.treat.optimise import suggest, task_for
+from planner.treat.optimise import suggest
+from planner.treat.task import task_for
 
 
 def asked(seed: int, wider: float = 0.0):

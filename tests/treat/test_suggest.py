@@ -13,9 +13,9 @@ from planner.air import Air
 from planner.errors import CatalogueError, OptionError
 from planner.room.model import TreatmentLimits
 from planner.treat.catalogue import Catalogue
+from planner.treat.covers import Cover, merged, pieces_to_cover
 from planner.treat.optimise import suggest
 from planner.treat.option import treated
-from planner.treat.problem import Cover, merged, pieces_to_cover
 
 PROMISED = {"status", "items", "cost", "predicted", "probability", "gap", "short_bands"}
 AIR = Air()
