@@ -41,6 +41,18 @@ LARGEST_U = 0.5
 FEW_DECAYS_U = 0.10
 """Relative standard uncertainty above which more decays are asked for. [-]"""
 
+REGULAR_DEGREES = 4.0
+"""Independent complex samples in a frame when the scatter about a fit is judged. [-]"""
+
+HOPELESS = 3.0
+"""Scatter about a fit, over that of noise, above which no figure is given. [-]"""
+
+NOT_NOISE = (
+    "what follows the switch-off is not a decay of noise: a gate or gain control in the recorder, "
+    "a slammed door, speech; switch such functions off, leave that burst out or record again"
+)
+"""The reason then."""
+
 LINE_SCATTER = {"t30": 0.55 * 1.52**0.5, "t20": 0.88 * 1.90**0.5, "t15": 1.36 * 1.90**0.5}
 """Relative standard deviation of a line is this over sqrt(n·B·T): the part of ISO 3382-2:2008,
 annex A, that more decays reduce; T15 scaled from T20 by the range to the power 3/2. [-]"""
@@ -143,7 +155,14 @@ def _evaluate(mean: BandEnergies, band: int, count: int, fit: Fits) -> BandDecay
     whole, relative = float(fit.one.time_s[0]), float(fit.one.relative_u[0])
     lines = _lines(mean, fit, best, steady, range_db)
     times = times_of(lines)
-    used, reason = choose(lines, range_db, relative, fit.two if bend.proven else None, count)
+    degrees = count * float(mean.bands.statistical_width[band]) * mean.frame_s
+    scatter, irregular = scatter_about(best, fit, degrees)
+    if irregular:
+        relative *= float(np.sqrt(scatter))
+    if irregular and scatter > HOPELESS:
+        used, reason = "", NOT_NOISE
+    else:
+        used, reason = choose(lines, range_db, relative, fit.two if bend.proven else None, count)
     t_s, relative = value_to_use(used, times, whole, relative, bend.doubt, count * width)
     shown = longest(lines)
     line = lines[shown] if shown else None
@@ -151,6 +170,7 @@ def _evaluate(mean: BandEnergies, band: int, count: int, fit: Fits) -> BandDecay
         ("refused", not used),
         ("bent", bend.flagged),
         ("curved", not bend.flagged and _curved(times, count * width)),
+        ("irregular", irregular),
         ("short-range", range_db < 35.0),
         ("limited-by-filter", width * t_s < (4.0 if mean.reverse else 16.0)),
         ("few-decays", bool(used) and relative > FEW_DECAYS_U),
@@ -201,6 +221,20 @@ def _lines(
     at = grouped(fit.time, size)
     level = 10.0 * np.log10(np.maximum(grouped(fit.energy, size), 1e-300) / steady)
     return standard_lines(at, level, 10.0 * np.log10(best.mean(at) / steady), range_db)
+
+
+def scatter_about(best: WholeDecay, fit: Fits, degrees: float) -> tuple[float, bool]:
+    """Mean square of the scatter about a fit over what noise alone gives; whether it is too much.
+
+    A gate, a slammed door, a recorder that rides its gain leave more than fluctuating noise can.
+    Pearson's statistic of gamma variates with `degrees` independent complex samples in a frame;
+    five of its standard deviations, sqrt((2 + 6/degrees)/frames), count as too much.
+    """
+    size = min(max(int(np.ceil(REGULAR_DEGREES / degrees)), 1), len(fit.energy) // 4)
+    ratio = grouped(fit.energy, size) / grouped(best.mean(fit.time), size)
+    scatter = float(np.mean((ratio - 1.0) ** 2) * degrees * size)
+    spread = np.sqrt((2.0 + 6.0 / (degrees * size)) / len(ratio))
+    return scatter, scatter > 1.0 + 5.0 * spread
 
 
 def choose(

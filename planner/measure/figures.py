@@ -72,8 +72,8 @@ class BandDecay:
     interval_s: tuple[float, float]
     """95 % interval of the same. [s]"""
     flags: tuple[str, ...]
-    """Doubts, a word each: ``refused``, ``bent``, ``curved``, ``short-range``, ``few-decays``,
-    ``limited-by-filter``, ``neighbour-leak``."""
+    """Doubts, a word each: ``refused``, ``bent``, ``curved``, ``irregular``, ``short-range``,
+    ``few-decays``, ``limited-by-filter``, ``neighbour-leak``."""
     curve: DecayCurve
 
 

@@ -116,3 +116,97 @@ def test_bursts_of_different_length_are_averaged_where_both_are():
 def test_no_burst_is_refused():
     with pytest.raises(RecordingError, match="no usable decay"):
         evaluate_decays([])
+
+
+def changed(change, *, time_s=0.5, snr_db=50.0, count=3, shift=0):
+    """Decays of three bursts, each signal changed by ``change(signal, stop, index)`` before."""
+    energies = []
+    for index in range(count):
+        signal, stop = interrupted(time_s, snr_db, 1 + index)
+        signal = change(signal.copy(), stop, index)
+        energies.append(
+            section_energies(
+                lambda a, b, s=signal: s[a:b],
+                RATE,
+                RATE // 2,
+                len(signal) - RATE // 4,
+                origin=stop + shift,
+            )
+        )
+    return evaluate_decays(energies)
+
+
+def assert_true_time(decays, time_s):
+    off = np.abs(decays.column("t_s") - time_s) / decays.column("u_s")
+    assert np.all(off < 3.0)
+    assert decays.column("t_s")[4:] == pytest.approx(time_s, rel=0.03)
+
+
+@pytest.mark.parametrize("drop_db", [3.0, 6.0])
+def test_the_loss_of_the_direct_sound_at_the_stop_does_not_matter(drop_db):
+    """Near the loudspeaker the level falls at once by some dB, then the room takes over."""
+
+    def louder_before(signal, stop, index):
+        signal[:stop] *= 10.0 ** (drop_db / 20.0)
+        return signal
+
+    assert_true_time(changed(louder_before), 0.5)
+
+
+@pytest.mark.parametrize("shift_ms", [-2, 2])
+def test_a_stop_known_to_2_ms_is_good_enough(shift_ms):
+    decays = changed(lambda signal, stop, index: signal, time_s=0.3, shift=shift_ms * RATE // 1000)
+    assert_true_time(decays, 0.3)
+
+
+def gate(level_db, factor):
+    def change(signal, stop, index):
+        signal[stop + int(0.5 * level_db / 60.0 * RATE) :] *= factor
+        return signal
+
+    return change
+
+
+def slam(signal, stop, index):
+    if index == 0:
+        length = RATE // 3
+        bang = np.random.default_rng(5).standard_normal(length)
+        bang *= 0.3 * np.exp(-np.arange(length) / (0.05 * RATE))
+        signal[stop + RATE : stop + RATE + length] += bang
+    return signal
+
+
+@pytest.mark.parametrize(
+    "change",
+    [gate(20.0, 0.0), gate(35.0, 0.0), gate(35.0, 0.01), slam],
+    ids=["gate at -20 dB", "gate at -35 dB", "soft gate at -35 dB", "slammed door"],
+)
+def test_what_is_no_decay_of_noise_is_refused(change):
+    for band in changed(change).each[1:]:
+        assert "irregular" in band.flags
+        assert np.isnan(band.t_s)
+        assert "gate" in band.reason
+
+
+def test_mains_hum_spoils_only_its_bands():
+    """Hum of 50 and 100 Hz: no range in the two lowest bands, the others as they were."""
+
+    def hum(signal, stop, index):
+        t = np.arange(len(signal)) / RATE
+        return signal + 0.05 * np.sin(100 * np.pi * t) + 0.03 * np.sin(200 * np.pi * t)
+
+    decays = changed(hum)
+    assert all("refused" in band.flags for band in decays.each[:2])
+    assert decays.column("t_s")[3:] == pytest.approx(0.5, rel=0.05)
+
+
+def test_exact_zeros_and_missing_bands_give_reasons_not_errors():
+    quiet = BandEnergies(np.zeros((1500, 8)), 0.001, -0.5, OCTAVE_BANDS)
+    decays = evaluate_decays([quiet])
+    assert all(band.reason and np.isnan(band.t_s) for band in decays.each)
+
+
+def test_too_little_noise_before_the_stop_is_refused():
+    short = BandEnergies(np.ones((1500, 8)), 0.001, -0.01, OCTAVE_BANDS)
+    with pytest.raises(RecordingError, match=r"0\.01 s of noise before"):
+        evaluate_decays([short])
