@@ -33,7 +33,13 @@ def describe(task: Task, found: Found) -> Suggestion:
     untreated = times_by(task, task.surfaces, (main,))[main]
     deviation = max(outside_by(methods[name], task.target, task.judged) for name in task.names)
     times = time_draws(
-        room, task.air, task.names, count=DRAWS, seed=task.seed, room_draws=task.room_draws
+        room,
+        task.air,
+        task.names,
+        count=DRAWS,
+        seed=task.seed,
+        room_draws=task.room_draws,
+        item_draws=task.item_draws,
     )
     inside = meets(times, task.target, task.judged)
     status = found.status

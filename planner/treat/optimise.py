@@ -28,6 +28,8 @@ from planner.treat.suggestion import SecondOpinion, Suggestion
 from planner.treat.task import Task, task_for
 from planner.treat.windows import Windows, absorption_area
 
+__all__ = ["Task", "best", "solve", "suggest", "task_for"]
+
 Array = NDArray[np.float64]
 
 
@@ -43,6 +45,7 @@ def suggest(
     covers: Sequence[Cover] = (),
     confidence: float | None = None,
     room_draws: Array | None = None,
+    item_draws: Array | None = None,
     include_assumed: bool = False,
     second_opinion: bool = True,
     simulation: Callable[[RoomSurfaces], Array] | None = None,
@@ -79,6 +82,8 @@ def suggest(
     room_draws
         Posterior draws of the coefficients of `surfaces`, shape ``(draw, part, band)``; drawn from
         their uncertainty by default. [-]
+    item_draws
+        Draws of the furnishings that belong to `room_draws`, ``(draw, item, band)``. [m²]
     include_assumed
         Let bands decide in which coefficients of the room are assumed. By default those are
         predicted and shown but neither constrain the list nor the verdict.
@@ -121,6 +126,7 @@ def suggest(
         covers=covers,
         confidence=confidence,
         room_draws=room_draws,
+        item_draws=item_draws,
         include_assumed=include_assumed,
         name=name,
         seed=seed,
@@ -184,6 +190,7 @@ def _judged_by_draws(task: Task, amounts: Array) -> tuple[float, list[tuple[Arra
         count=STEERING_DRAWS,
         seed=task.seed + 1000,
         room_draws=task.room_draws,
+        item_draws=task.item_draws,
     )
     inside = meets(times, task.target, task.judged)
     spread = area_spread(room, task.air, times)

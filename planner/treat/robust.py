@@ -36,6 +36,7 @@ def time_draws(
     count: int,
     seed: int,
     room_draws: Array | None = None,
+    item_draws: Array | None = None,
 ) -> dict[str, Array]:
     """Reverberation times of a treated room, drawn from what is not known of it.
 
@@ -51,6 +52,9 @@ def time_draws(
         Draws of the untreated room's coefficients, shape ``(draw, part, band)``, from a
         calibration; those parts come first in `surfaces`. Products are still drawn from their own
         uncertainty. [-]
+    item_draws
+        Draws of the furnishings that came with `room_draws`, row by row, shape
+        ``(draw, item, band)``; those furnishings come first in `surfaces`. [m²]
 
     Returns
     -------
@@ -64,22 +68,43 @@ def time_draws(
     """
     room = draw(surfaces, air, count, seed).room
     if room_draws is not None:
-        given = _fitting(np.asarray(room_draws, float), surfaces)
+        untreated = sum(part.kind != "panel" for part in surfaces.parts)
+        given = _fitting(np.asarray(room_draws, float), untreated, "parts")
+        generator = np.random.default_rng(seed + 7919)
+        rows = generator.integers(len(given), size=count)
         alpha = room.alpha.copy()
-        rows = np.random.default_rng(seed + 7919).integers(len(given), size=count)
-        alpha[:, : given.shape[1]] = given[rows]
+        alpha[:, :untreated] = given[rows]
         room = replace(room, alpha=alpha)
+        if item_draws is not None:
+            room = replace(room, item_area=_items(surfaces, item_draws, rows, generator))
     return {name: reverberation_time(name, room) for name in names}
 
 
-def _fitting(draws: Array, surfaces: RoomSurfaces) -> Array:
-    untreated = sum(part.kind != "panel" for part in surfaces.parts)
-    if draws.ndim != 3 or draws.shape[1:] != (untreated, len(OCTAVES)) or len(draws) < 1:
+def _fitting(draws: Array, count: int, what: str) -> Array:
+    if draws.ndim != 3 or draws.shape[1:] != (count, len(OCTAVES)) or len(draws) < 1:
         raise OptionError(
-            f"draws of shape {draws.shape} do not fit a room of {untreated} parts",
-            cure=f"Give an array (draw, {untreated}, {len(OCTAVES)}).",
+            f"draws of shape {draws.shape} do not fit a room of {count} {what}",
+            cure=f"Give an array (draw, {count}, {len(OCTAVES)}).",
         )
     return draws
+
+
+def _items(
+    surfaces: RoomSurfaces, draws: Array, rows: NDArray[np.intp], generator: np.random.Generator
+) -> Array:
+    """Absorption area of furnishings as drawn and of free-standing products, ``(draw, band)``."""
+    given = np.asarray(draws, float)
+    if given.ndim != 3 or given.shape[1] > len(surfaces.items) or rows.max() >= len(given):
+        raise OptionError(
+            f"draws of shape {given.shape} do not fit a room of {len(surfaces.items)} furnishings",
+            cure="Give an array (draw, furnishing, band) of as many draws as of the surfaces.",
+        )
+    old = given.shape[1]
+    area: Array = np.einsum("i,dib->db", surfaces.item_count[:old], given[rows])
+    for number in range(old, len(surfaces.items)):
+        error = generator.standard_normal(area.shape) * surfaces.item_u[number]
+        area += surfaces.item_count[number] * np.maximum(surfaces.item_area[number] + error, 0.0)
+    return area
 
 
 def meets(

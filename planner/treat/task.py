@@ -36,6 +36,7 @@ class Task:
     judged: NDArray[np.bool_]
     windows: tuple[Windows, ...]
     room_draws: Array | None
+    item_draws: Array | None
     confidence: float | None
     name: str
     seed: int
@@ -58,6 +59,7 @@ def task_for(
     covers: Sequence[Cover] = (),
     confidence: float | None = None,
     room_draws: Array | None = None,
+    item_draws: Array | None = None,
     include_assumed: bool = False,
     name: str = "suggested",
     seed: int = 1,
@@ -92,6 +94,7 @@ def task_for(
         judged=judged_bands(target, surfaces, include_assumed=include_assumed),
         windows=windows(surfaces, air, target.low, target.high, formulas(limits.formula)),
         room_draws=room_draws,
+        item_draws=item_draws,
         confidence=confidence,
         name=name,
         seed=seed,

@@ -213,15 +213,14 @@ def test_never_dearer_than_greedy_and_evolution_and_proven_in_time(capsys):
         cost = instance.problem.cost(found.amounts)
         by_greed = greedy(instance)
         began = time.perf_counter()
-        by_evolution = evolution(instance, 600) if seed % 5 == 0 else np.nan
+        by_evolution = evolution(instance, 300)
         theirs = time.perf_counter() - began
         assert cost <= by_greed + 1e-6, seed
-        assert not by_evolution < cost - 1e-6, seed
+        assert cost <= by_evolution + 1e-6, seed
         seconds.append(ours)
         proven += found.status is Status.OPTIMAL
         dearer.append((by_greed / cost, by_evolution / cost))
-        if seed % 5 == 0:
-            slower.append(theirs / ours)
+        slower.append(theirs / ours)
     greed, evolved = np.array(dearer).T
     with capsys.disabled():
         print(
@@ -234,10 +233,9 @@ def test_never_dearer_than_greedy_and_evolution_and_proven_in_time(capsys):
             f"  greedy: no list in {np.sum(~np.isfinite(greed))} rooms, else "
             f"{np.median(solved) if len(solved) else np.nan:.2f} x the cost (median)"
         )
-        tried = evolved[~np.isnan(evolved)]
-        met = tried[np.isfinite(tried)]
+        met = evolved[np.isfinite(evolved)]
         print(
-            f"  differential evolution: no list in {np.sum(~np.isfinite(tried))} of {len(tried)}, "
+            f"  differential evolution: no list in {np.sum(~np.isfinite(evolved))} rooms, "
             f"else {np.median(met) if len(met) else np.nan:.2f} x the cost; "
             f"{np.median(slower):.0f} x the time"
         )

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from treat_enumeration import time_by
-from treat_rooms import BANDS, box, panel, target
+from treat_rooms import BANDS, box, coefficients, panel, target
 
 from planner.air import Air
 from planner.errors import OptionError
@@ -116,3 +116,28 @@ def test_posterior_draws_take_the_place_of_the_tables():
 def test_draws_of_another_room_are_refused(shape):
     with pytest.raises(OptionError, match="do not fit a room of 6 parts"):
         ask(room_draws=np.zeros(shape))
+
+
+def test_drawn_furnishings_go_with_the_drawn_room():
+    """Room and furnishings that trade absorption one for one leave the total known."""
+    goods = Catalogue([panel("all", 0.9, price=30.0)])
+    rng = np.random.default_rng(2)
+    extra = rng.normal(0.0, 2.0, (400, 1, BANDS))
+    surface = box().surface_area
+    rooms = np.repeat(0.2 - extra / surface, 6, axis=1)
+    chairs = 3.0 + extra
+    values = coefficients(np.full(BANDS, 3.0), 2.0)
+    room = box(alpha=0.2).with_item("chairs", 1, values)
+    known = {"second_opinion": False, "explain": False, "room_draws": rooms}
+    untreated = target(0.95 * _eyring(room), 1.05 * _eyring(room))
+    together = suggest(room, AIR, untreated, goods, item_draws=chairs, **known)
+    apart = suggest(room, AIR, untreated, goods, **known)
+    assert together.items == ()
+    assert together.probability > apart.probability + 0.2
+    with pytest.raises(OptionError, match="1 furnishings"):
+        suggest(room, AIR, untreated, goods, item_draws=np.ones((400, 3, BANDS)), **known)
+
+
+def _eyring(room) -> np.ndarray:
+    area = room.area @ room.alpha + room.item_count @ room.item_area
+    return time_by("eyring", area, room.volume, room.area.sum(), AIR)
