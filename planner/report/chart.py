@@ -15,12 +15,12 @@ import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from html import escape
-from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from planner.report.palette import DARK, FONT, FONT_STACK, LIGHT, Theme
+from planner.report.glyphs import printable
+from planner.report.palette import DARK, FONT, FONT_STACK, FONTS, LIGHT, Theme
 
 if TYPE_CHECKING:
     import altair
@@ -29,7 +29,6 @@ if TYPE_CHECKING:
 SCHEMA = "https://vega.github.io/schema/vega-lite/v6.json"
 """Names the dialect; nothing is fetched from there."""
 VEGALITE = "6.4"
-FONTS = Path(__file__).parent / "fonts"
 MOST_ROWS = 400
 """Rows that one chart may hold; longer curves are thinned, longer lists are cut with a note."""
 
@@ -162,11 +161,22 @@ def to_svg(chart: Chart, theme: Theme = LIGHT) -> str:
         vl-convert is not installed.
     """
     converter = _converter()
-    spec = json.dumps(chart.vega_lite(theme))
+    spec = json.dumps(_printable(chart.vega_lite(theme)), ensure_ascii=False)
     svg = _own_names(converter.vegalite_to_svg(spec, vl_version=VEGALITE), spec)
-    name = f"<title>{escape(chart.description)}</title>"
+    name = f"<title>{escape(printable(chart.description, breakable=False, picture=True))}</title>"
     start = svg.index(">", svg.index("<svg")) + 1
     return f'{svg[: start - 1]} role="img">{name}{svg[start:]}'
+
+
+def _printable(part: Any) -> Any:
+    """The same with texts that can be set: some characters would stop the converter dead."""
+    if isinstance(part, dict):
+        return {key: _printable(value) for key, value in part.items()}
+    if isinstance(part, list | tuple):
+        return [_printable(value) for value in part]
+    if isinstance(part, str) and not (part.isascii() and part.isprintable()):
+        return printable(part, breakable=False, picture=True)
+    return part
 
 
 def _own_names(svg: str, spec: str) -> str:

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import functools
 import re
 from collections.abc import Callable
 from dataclasses import dataclass
 from html import escape
 
 from planner.report.drawing_marks import Circle, Drawing, Label, Line, Mark, Outline, Point
+from planner.report.glyphs import printable
 from planner.report.palette import DARK, FONT_STACK, LIGHT, Theme
 
 MARGIN = 2.0
@@ -55,12 +57,15 @@ PANEL = {LIGHT: ("#e7e8f4", "#3b3e78"), DARK: ("#2b2e55", "#9ea1d8")}
 def to_svg(drawing: Drawing, theme: Theme = LIGHT) -> str:
     """The drawing as SVG whose size on paper is true to its scale."""
     width, height = (size + 2 * MARGIN for size in drawing.paper_size)
-    return _document(drawing, theme, f'width="{width:.3f}mm" height="{height:.3f}mm"')
+    size = f'width="{width:.3f}mm" height="{height:.3f}mm"'
+    return _document(
+        drawing, theme, size, functools.partial(printable, breakable=False, picture=True)
+    )
 
 
 def to_screen_svg(drawing: Drawing, theme: Theme = LIGHT) -> str:
     """The drawing as SVG that fills the width it is given."""
-    return _document(drawing, theme, 'width="100%"')
+    return _document(drawing, theme, 'width="100%"', clean)
 
 
 def clean(text: str) -> str:
@@ -68,7 +73,7 @@ def clean(text: str) -> str:
     return _NOT_IN_XML.sub("\ufffd", text)
 
 
-def _document(drawing: Drawing, theme: Theme, size: str) -> str:
+def _document(drawing: Drawing, theme: Theme, size: str, legible: Callable[[str], str]) -> str:
     left, bottom, right, top = drawing.bounds
     width = drawing.paper(right - left) + 2 * MARGIN
     height = drawing.paper(top - bottom) + 2 * MARGIN
@@ -76,8 +81,8 @@ def _document(drawing: Drawing, theme: Theme, size: str) -> str:
     def place(point: Point) -> Point:
         return MARGIN + drawing.paper(point[0] - left), MARGIN + drawing.paper(top - point[1])
 
-    body = "\n".join(_mark(mark, place, drawing, theme) for mark in drawing.marks)
-    words = escape(clean(drawing.description or drawing.title))
+    body = "\n".join(_mark(mark, place, drawing, theme, legible) for mark in drawing.marks)
+    words = escape(legible(drawing.description or drawing.title))
     return (
         f'<svg xmlns="http://www.w3.org/2000/svg" {size} '
         f'viewBox="0 0 {width:.3f} {height:.3f}" role="img" font-family="{FONT_STACK}">'
@@ -100,7 +105,9 @@ def _look(layer: str, theme: Theme) -> str:
     return look + (f' stroke-dasharray="{pen.dash}"' if pen.dash else "")
 
 
-def _mark(mark: Mark, place: Place, drawing: Drawing, theme: Theme) -> str:
+def _mark(
+    mark: Mark, place: Place, drawing: Drawing, theme: Theme, legible: Callable[[str], str]
+) -> str:
     match mark:
         case Line(start, end, layer):
             (x1, y1), (x2, y2) = place(start), place(end)
@@ -113,18 +120,18 @@ def _mark(mark: Mark, place: Place, drawing: Drawing, theme: Theme) -> str:
             return f'<circle {_look(layer, theme)} cx="{x:.3f}" cy="{y:.3f}" r="{drawing.paper(radius):.3f}"/>'
         case Outline(points, layer, name):
             corners = " ".join("{:.3f},{:.3f}".format(*place(point)) for point in points)
-            named = f' data-name="{escape(clean(name))}"' if name else ""
+            named = f' data-name="{escape(legible(name))}"' if name else ""
             return f'<polygon {_look(layer, theme)}{named} points="{corners}"/>'
         case Label():
-            return _text(mark, place, theme)
+            return _text(mark, place, theme, legible)
 
 
-def _text(label: Label, place: Place, theme: Theme) -> str:
+def _text(label: Label, place: Place, theme: Theme, legible: Callable[[str], str]) -> str:
     x, y = place(label.at)
     drop = 0.36 * label.size
     turn = f' transform="rotate({-label.angle:g} {x:.3f} {y:.3f})"' if label.angle else ""
     weight = ' font-weight="bold"' if label.layer in ("heading", "number") else ""
-    shown = escape(clean(label.text))
+    shown = escape(legible(label.text))
     text = (
         f'<text class="{label.layer}" x="{x:.3f}" y="{y + drop:.3f}" font-size="{label.size:g}" '
         f'text-anchor="{label.anchor}" fill="{theme.ink}"{weight}{turn}>{shown}</text>'

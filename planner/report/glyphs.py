@@ -5,16 +5,17 @@ from __future__ import annotations
 import functools
 import re
 import struct
+import unicodedata
 from pathlib import Path
 
-from planner.report.chart import FONTS
+from planner.report.palette import FONTS
 
 INVISIBLE = {0x200B, 0x200C, 0x200D, 0x00AD, 0x2060, 0xFEFF}
 _UNIT = re.compile(r"(?<=\d) (?=(?:%|Hz|kHz|dB|s|m|mm|m²|m³|kg|°C)(?![\w²³]))")
 _LONG_WORD = re.compile(r"[^\s\u200b]{24,}")
 
 
-def printable(text: str, *, breakable: bool = True) -> str:
+def printable(text: str, *, breakable: bool = True, picture: bool = False) -> str:
     """The text as it can be set on paper.
 
     Line ends become spaces, the space before a unit does not break; controls, marks that turn the direction of writing and characters that
@@ -26,15 +27,27 @@ def printable(text: str, *, breakable: bool = True) -> str:
         Any text.
     breakable
         Put invisible break points into words of 24 characters and more.
+    picture
+        For text inside SVG: accents are joined with their letters, those that cannot be become
+        their code, because a tagged PDF cannot tell what such a pair of glyphs means.
     """
     line = re.sub(r"\s+", " ", text).strip()
-    known = covered()
+    if picture:
+        line = unicodedata.normalize("NFC", line)
+    known = covered_in_pictures() if picture else covered()
     if not all(ord(c) in known for c in line):
         line = "".join(c if ord(c) in known else f"⟨U+{ord(c):04X}⟩" for c in line)
     line = _UNIT.sub("\u00a0", line)
     if breakable:
         line = _LONG_WORD.sub(lambda word: _broken(word[0]), line)
     return line
+
+
+@functools.cache
+def covered_in_pictures() -> frozenset[int]:
+    """`covered`, less combining marks."""
+    marks = {point for point in covered() if unicodedata.category(chr(point)).startswith("M")}
+    return covered() - marks
 
 
 @functools.cache

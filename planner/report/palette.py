@@ -8,7 +8,10 @@ series is always told by colour, marker and dash together, and text never has a 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from pathlib import Path
 
+FONTS = Path(__file__).parent / "fonts"
+"""Folder of the shipped fonts."""
 FONT = "Planner Sans"
 """The shipped typeface, see ``fonts/``."""
 FONT_STACK = "'Planner Sans', 'Noto Sans', 'DejaVu Sans', sans-serif"

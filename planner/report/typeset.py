@@ -14,7 +14,6 @@ from pathlib import Path
 from typing import Any
 
 from planner.errors import MissingPartError
-from planner.report.chart import FONTS
 from planner.report.document import (
     Block,
     Bullets,
@@ -27,6 +26,7 @@ from planner.report.document import (
     Words,
 )
 from planner.report.glyphs import printable
+from planner.report.palette import FONTS
 
 TEMPLATE = Path(__file__).parent / "templates" / "document.typ"
 
@@ -43,14 +43,18 @@ def to_pdf(document: Document) -> bytes:
     files: dict[str, bytes] = {"main.typ": TEMPLATE.read_bytes()}
     data = _Data(files).document(document)
     files["data.json"] = json.dumps(data, ensure_ascii=False, allow_nan=False).encode("utf-8")
-    pdf, _ = typst.compile_with_warnings(
-        files,
-        format="pdf",
-        font_paths=_fonts(),
-        ignore_system_fonts=True,
-        pdf_standards=["ua-1"],
-        timestamp=document.timestamp,
-    )
+    options = {
+        "format": "pdf",
+        "font_paths": _fonts(),
+        "ignore_system_fonts": True,
+        "timestamp": document.timestamp,
+    }
+    try:
+        pdf, _ = typst.compile_with_warnings(files, pdf_standards=["ua-1"], **options)
+    except typst.TypstError:
+        # Some pair of glyphs without a meaning of its own: the paper still matters more than the
+        # profile, and its tags stay in it.
+        pdf, _ = typst.compile_with_warnings(files, **options)
     return bytes(pdf)
 
 

@@ -10,11 +10,11 @@ import pypdf
 import pytest
 
 from planner.errors import InputError, MissingPartError
-from planner.report.chart import FONTS
 from planner.report.document import Builder, Document, Picture
 from planner.report.glyphs import code_points, covered, printable
 from planner.report.html import to_html
 from planner.report.list_formats import list_document
+from planner.report.palette import FONTS
 from planner.report.printing import write_document, write_list
 from planner.report.report import report_document
 from planner.report.typeset import to_pdf
