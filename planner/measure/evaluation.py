@@ -132,17 +132,31 @@ def _fit_window(
     rough = fit_whole_decay(grouped(energy, coarse), grouped(time, coarse), degrees * coarse)
     wanted = rough.time_s[0] / 40.0 / mean.frame_s
     sizes = np.clip(wanted, 1, max(len(time) // 40, 1)).astype(int)
+    ends = np.minimum(_enough(rough, float(time[-1])) / mean.frame_s, len(time)).astype(int)
     fits = {}
-    for size in np.unique(sizes):
-        chosen = np.flatnonzero(sizes == size)
-        at, part = grouped(time, size), grouped(energy[:, chosen], size)
+    for size, end in set(zip(sizes.tolist(), ends.tolist(), strict=True)):
+        chosen = np.flatnonzero((sizes == size) & (ends == end))
+        at, part = grouped(time[:end], size), grouped(energy[:end, chosen], size)
         one = fit_whole_decay(part, at, degrees[chosen] * size)
-        two = fit_whole_decay(part, at, degrees[chosen] * size, slopes=2)
+        two = fit_whole_decay(part, at, degrees[chosen] * size, slopes=2, single=one)
         for place, index in enumerate(chosen):
             fits[int(members[index])] = Fits(
-                time, energy[:, index], one.decay(place), two.decay(place)
+                time[:end], energy[:end, index], one.decay(place), two.decay(place)
             )
     return fits
+
+
+def _enough(rough: WholeDecay, longest_s: float) -> Array:
+    """How much of the time after the switch-off is to be fitted. [s].
+
+    Three times until the decay meets the noise, and a second of noise at least: what happens
+    later says nothing about the decay. Rounded up to a few lengths, so that bands share a fit.
+    """
+    with np.errstate(divide="ignore", over="ignore"):
+        meets = rough.time_s[0] / 6.0 * np.log10(np.maximum(rough.amplitude[0] / rough.floor, 1.0))
+    needed = np.clip(np.maximum(3.0 * meets, meets + 1.0), 1.0, longest_s)
+    rounded: Array = 1.25 ** np.ceil(np.log(needed) / np.log(1.25))
+    return rounded
 
 
 def _evaluate(mean: BandEnergies, band: int, count: int, fit: Fits) -> BandDecay:

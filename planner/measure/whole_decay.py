@@ -67,7 +67,12 @@ class WholeDecay:
 
 
 def fit_whole_decay(
-    energy: Array, times: Array, degrees: ArrayLike, *, slopes: int = 1, start: Array | None = None
+    energy: Array,
+    times: Array,
+    degrees: ArrayLike,
+    *,
+    slopes: int = 1,
+    single: WholeDecay | None = None,
 ) -> WholeDecay:
     """Fit one or two exponentials and a floor to frame energies.
 
@@ -81,8 +86,9 @@ def fit_whole_decay(
         Independent complex samples in a frame (half its degrees of freedom), shape ``(...)``. [-]
     slopes
         1 or 2 exponentials.
-    start
-        Parameters to begin with, shape ``(2 · slopes + 1, ...)``: ln A, ln T, …, ln F.
+    single
+        The fit of one exponential to the same energies, from which that of two begins; it is made
+        where not given.
 
     Returns
     -------
@@ -94,11 +100,16 @@ def fit_whole_decay(
     weight = np.broadcast_to(np.asarray(degrees, float), shape).reshape(-1)
     scale = np.maximum(data.mean(axis=0), 1e-300)
     data = np.maximum(data / scale, 1e-20)
-    if start is None:
-        theta = _start_one(data, times) if slopes == 1 else _start_two(data, times, weight)
+    if single is None:
+        theta = _start_one(data, times)
+        if slopes == 2:
+            theta, _, _ = _maximise(data, times, weight, theta)
     else:
-        theta = start.reshape(len(start), -1).copy()
-        theta[[*range(0, 2 * slopes, 2), -1]] -= np.log(scale)
+        theta = np.log(
+            np.maximum([single.amplitude[0] / scale, single.time_s[0], single.floor / scale], 1e-30)
+        ).reshape(3, -1)
+    if slopes == 2:
+        theta = _start_two(data, times, weight, theta)
     theta, deviance, information = _maximise(data, times, weight, theta)
     covariance = np.linalg.pinv(np.moveaxis(information, -1, 0), hermitian=True)
     order = np.argsort(theta[1:-1:2], axis=0)
@@ -199,17 +210,21 @@ def _start_one(data: Array, times: Array) -> Array:
     return theta
 
 
-def _start_two(data: Array, times: Array, weight: Array) -> Array:
-    """From the single slope: a steeper part on top and a flatter one under it."""
-    one, _, _ = _maximise(data, times, weight, _start_one(data, times))
-    best = np.full(data.shape[1], np.inf)
-    theta = np.zeros((5, data.shape[1]))
-    for steep, flat, drop in ((0.6, 1.6, 2.0), (0.7, 2.5, 5.0), (0.8, 1.2, 1.0), (0.2, 1.02, 0.5)):
-        trial = np.stack(
-            [one[0], one[1] + np.log(steep), one[0] - drop, one[1] + np.log(flat), one[2]]
-        )
-        trial, deviance, _ = _maximise(data, times, weight, trial, rounds=12)
-        better = deviance < best
-        best = np.where(better, deviance, best)
-        theta = np.where(better, trial, theta)
-    return theta
+STARTS = ((0.6, 1.6, 2.0), (0.7, 2.5, 5.0), (0.8, 1.2, 1.0), (0.2, 1.02, 0.5))
+"""Where two slopes are looked for: both times over the single one, and how many nepers the flatter
+one begins under the steeper. [-]"""
+
+
+def _start_two(data: Array, times: Array, weight: Array, one: Array) -> Array:
+    """From the single slope: a steeper part on top and a flatter one under it, the best of some."""
+    trials = [
+        np.stack([one[0], one[1] + np.log(steep), one[0] - drop, one[1] + np.log(flat), one[2]])
+        for steep, flat, drop in STARTS
+    ]
+    many = len(STARTS)
+    theta, deviance, _ = _maximise(
+        np.tile(data, many), times, np.tile(weight, many), np.concatenate(trials, axis=1), rounds=12
+    )
+    best = np.argmin(deviance.reshape(many, -1), axis=0)
+    chosen: Array = theta.reshape(5, many, -1)[:, best, np.arange(data.shape[1])]
+    return chosen
