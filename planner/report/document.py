@@ -38,8 +38,8 @@ class Table:
     rows: tuple[tuple[str, ...], ...]
     right: tuple[int, ...] = ()
     """Columns of numbers, set flush right."""
-    wide: int | None = None
-    """The column that takes the width that is left; the first by default, none for −1."""
+    wide: int | tuple[int, ...] | None = None
+    """Columns that share the width that is left; the first by default, none for −1."""
     total: tuple[str, ...] | None = None
     """A last row that sums up, printed once."""
     caption: str = ""

@@ -30,6 +30,7 @@ h1, h2 {{ color: #3b3e78; }} h1 {{ margin-bottom: 0.2rem; }}
 .scroll {{ overflow-x: auto; }}
 table {{ border-collapse: collapse; width: 100%; margin: 1rem 0; font-size: 0.9rem;
   font-variant-numeric: tabular-nums; }}
+table.compact {{ width: auto; }}
 caption {{ text-align: left; padding-bottom: 0.4rem; }}
 th {{ text-align: left; vertical-align: bottom; border-bottom: 1.5px solid #1d1f24; }}
 td {{ vertical-align: top; border-bottom: 1px solid #d5d7dc; }}
@@ -129,7 +130,8 @@ def _table(table: Table) -> str:
     body = "".join(f"<tr>{cells(row, 'td')}</tr>" for row in table.rows)
     foot = f"<tfoot><tr>{cells(table.total, 'td')}</tr></tfoot>" if table.total else ""
     head = cells(table.heads, "th", ' scope="col"')
+    look = ' class="compact"' if table.wide == -1 else ""
     return (
-        f'<div class="scroll"><table>{caption}<thead><tr>{head}</tr></thead>'
+        f'<div class="scroll"><table{look}>{caption}<thead><tr>{head}</tr></thead>'
         f"<tbody>{body}</tbody>{foot}</table></div>"
     )

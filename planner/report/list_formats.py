@@ -109,7 +109,7 @@ def _raw(buying: BuyingList, show: Quantities) -> Builder:
         for line in buying.raw
     ]
     heads = ("goods", "needed", "buy", "waste", "price")
-    builder.table(heads, rows, right=(3,), wide=1, small=True)
+    builder.table(heads, rows, right=(3,), wide=(0, 1, 2), small=True)
     cuts = [
         (
             line.goods,

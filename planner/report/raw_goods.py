@@ -277,7 +277,7 @@ def _cloth(made: Sequence[HandMade], sold: Supplies) -> RawLine:
     return RawLine(
         goods=f"Breathable cloth, roll {sold.show.cut(sold.cloth_width)} wide",
         need=f"{sold.show.area(area)} with {sold.show.small(sold.cloth_wrap * 1000)} folded behind each edge",
-        buy=f"{sold.show.cut(bought)} of the roll",
+        buy=f"{sold.show.length(bought)} of the roll",
         amount=round(bought, 3),
         waste=1.0 - area / (bought * sold.cloth_width),
         notes=tuple(notes),

@@ -16,6 +16,7 @@ from planner.report.list_formats import list_sections
 from planner.report.quantities import NONE, Quantities, money, seconds
 from planner.report.report_client import after_times, now_times
 from planner.report.report_data import ReportData, band_heads
+from planner.room.lengths import METRES_PER
 
 if TYPE_CHECKING:
     from planner.treat.suggestion import Suggestion
@@ -35,16 +36,17 @@ def option_sections(data: ReportData) -> list[Section]:
             money(option.cost),
             show.small(option.depth_mm),
             show.area(option.area_m2),
-            money(option.cost_per_m2_125),
-            money(option.cost_per_m2_1000),
+            money(_each(option.cost_per_m2_125, show)),
+            money(_each(option.cost_per_m2_1000, show)),
         )
         for option in data.options
     ]
     heads = ("option", "outside at", "inside", f"cost ({currency})", "deepest", "covers",
              "125 Hz", "1 kHz")  # fmt: skip
+    unit = "ft²" if show.imperial else "m²"
     caption = (
         "Outside at: bands outside the target; inside: probability of lying inside it; deepest: thickness "
-        "and gap; 125 Hz and 1 kHz: cost of a square metre of absorption area added there"
+        f"and gap; 125 Hz and 1 kHz: cost of one {unit} of absorption area added there"
     )
     builder = Builder().table(
         heads, rows, right=(2, 3, 4, 5, 6, 7), wide=0, small=True, caption=caption
@@ -69,6 +71,13 @@ def option_sections(data: ReportData) -> list[Section]:
     small = [picture(c) for c in charts.side_by_side(series, data.target, untreated=untreated)]
     builder.blocks += [Row(tuple(small[n : n + 2])) for n in range(0, len(small), 2)]
     return builder.section("Options compared")
+
+
+def _each(cost_per_m2: float | None, show: Quantities) -> float | None:
+    """Cost of one unit of absorption area in the paper's units."""
+    if cost_per_m2 is None or not show.imperial:
+        return cost_per_m2
+    return cost_per_m2 * METRES_PER["ft"] ** 2
 
 
 def treatment_sections(data: ReportData) -> list[Section]:
@@ -114,8 +123,8 @@ def treatment_sections(data: ReportData) -> list[Section]:
                 band.side,
                 seconds(band.reached_s),
                 seconds(band.limit_s),
-                f"{band.short_by_m2:.2f}",
-                f"{band.largest_possible_m2:.2f}",
+                Quantities(data.units).area(band.short_by_m2),
+                Quantities(data.units).area(band.largest_possible_m2),
             )
             for band in chosen.short_bands
         ]
@@ -125,8 +134,8 @@ def treatment_sections(data: ReportData) -> list[Section]:
                 "side",
                 "reached (s)",
                 "limit (s)",
-                "still short by (m²)",
-                "most possible (m²)",
+                "still short by",
+                "most possible",
             ),
             short,
             right=(2, 3, 4, 5),

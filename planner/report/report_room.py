@@ -102,7 +102,7 @@ def assumption_sections(data: ReportData) -> list[Section]:
                 f"{prediction.capped} coefficients above 0.99 (normal for laboratory values) count as 0.99 in the logarithmic formulas and in ray tracing; Sabine takes them as they are."
             )
     said.append(
-        f"Dimensions are good to {data.room.shape.uncertainty * 1000:.0f} mm (standard uncertainty)."
+        f"Dimensions are good to {Quantities(data.units).small(data.room.shape.uncertainty * 1000)} (standard uncertainty)."
     )
     said.append(
         "The formulas take the sound field as diffuse, which small rooms are not at low frequencies."

@@ -131,14 +131,15 @@ class _Data:
                 return {"kind": "words", "text": "", "strong": False}
 
     def table(self, table: Table) -> dict[str, Any]:
-        wide = table.wide if table.wide is not None else 0
+        wide = 0 if table.wide is None else table.wide
+        shared = wide if isinstance(wide, tuple) else (wide,)
         return {
             "kind": "table",
             "heads": [printable(head) or "\u00a0" for head in table.heads],
             "rows": [[printable(cell) for cell in row] for row in table.rows],
             "total": [printable(cell) for cell in table.total] if table.total else None,
             "right": list(table.right),
-            "columns": [1 if n == wide else 0 for n in range(len(table.heads))],
+            "columns": [int(n in shared) for n in range(len(table.heads))],
             "caption": printable(table.caption),
             "small": table.small,
         }
