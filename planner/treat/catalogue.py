@@ -12,7 +12,7 @@ from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from difflib import get_close_matches
 from pathlib import Path
-from typing import Literal
+from typing import Any, Literal
 
 from planner.absorption.library import Coefficients
 from planner.errors import CatalogueError
@@ -57,6 +57,8 @@ class Product:
     """Per square metre; for ``item`` the absorption area of one. [-] or [m²]"""
     source: str = ""
     note: str = ""
+    build_up: tuple[dict[str, Any], ...] | None = None
+    """Its layers from the front to the wall, where it is described by them."""
 
     @property
     def piece_area(self) -> float:

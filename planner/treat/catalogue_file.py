@@ -5,7 +5,7 @@ from __future__ import annotations
 import re
 import tomllib
 from collections.abc import Sequence
-from typing import cast
+from typing import Any, cast
 
 import numpy as np
 
@@ -20,6 +20,7 @@ from planner.bands import OCTAVES
 from planner.errors import CatalogueError, InputError
 from planner.treat.catalogue import FREE, Product, Unit
 from planner.treat.cells import Row, decoded, number_of, rows_of
+from planner.treat.variants import filled_in, variants
 
 FEWEST_BANDS = 3
 """Coefficients needed; a single-number rating does not say what happens in a band."""
@@ -60,13 +61,16 @@ def products_from_bytes(raw: bytes, *, file: str) -> list[Product]:
     seen: dict[str, int] = {}
     for row in rows:
         try:
-            product = _product(row)
-            if product.id in seen:
-                raise row.wrong(
-                    "id", f"{product.id!r} stands in row {seen[product.id]} already", "Rename one."
-                )
-            seen[product.id] = row.number
-            products.append(product)
+            for one in variants(row):
+                product = _product(one)
+                if product.id in seen:
+                    raise row.wrong(
+                        "id",
+                        f"{product.id!r} stands in row {seen[product.id]} already",
+                        "Rename one.",
+                    )
+                seen[product.id] = row.number
+                products.append(product)
         except CatalogueError as error:
             wrong.append(error)
             if len(wrong) > 5:
@@ -126,6 +130,7 @@ def _product(row: Row) -> Product:
         coefficients=_values(row, unit, material),
         source=row.text("source"),
         note=row.text("note"),
+        build_up=_layers(row) if row.cells.get("build_up") else None,
     )
 
 
@@ -239,7 +244,7 @@ def _values(row: Row, unit: Unit, material: Material | None) -> Coefficients:
         raise row.wrong(BAND_COLUMNS[0], error.what, error.cure) from error
 
 
-def _from_layers(row: Row) -> Material:
+def _layers(row: Row) -> tuple[dict[str, Any], ...]:
     cell = row.text("build_up", 2000)
     try:
         layers = tomllib.loads(f"build_up = {cell}")["build_up"]
@@ -251,13 +256,18 @@ def _from_layers(row: Row) -> Material:
         ) from error
     if not isinstance(layers, list) or not all(isinstance(layer, dict) for layer in layers):
         raise row.wrong("build_up", "is no list of layers", "Write [{ … }, { … }].")
+    return tuple(filled_in(row, layers))
+
+
+def _from_layers(row: Row) -> Material:
+    layers = _layers(row)
     from planner.absorption.build_up import (  # type: ignore[import-not-found,unused-ignore]
         material_from_build_up,
     )
 
     try:
         material: Material = material_from_build_up(
-            row.cells["id"], row.cells.get("description", ""), tuple(layers)
+            row.cells["id"], row.cells.get("description", ""), layers
         )
     except InputError as error:
         raise row.wrong("build_up", error.what, error.cure) from error

@@ -178,6 +178,47 @@ def test_all_wrong_rows_are_named_at_once():
         products_from_bytes(f"{HEAD}\n{rows}\n".encode(), file="c.csv")
 
 
+VARIED = "id,width_m,height_m,thickness_mm,gap_mm,pack,price_per_pack,weight_kg,build_up\n"
+
+
+def test_one_row_offers_thicknesses_and_gaps():
+    """Two thicknesses with prices of their own, three gaps: six products; a gap of 0 has no layer."""
+    from planner.treat.cells import rows_of
+    from planner.treat.variants import filled_in, variants
+
+    text = VARIED + 'wool,1.2,0.6,50/100,0/50/100,1,30/48,3,"[]"\n'
+    (row,) = rows_of(text, "c.csv", VARIED.strip().split(","))
+    made = variants(row)
+    assert [one.cells["id"] for one in made] == [
+        "wool@50+0", "wool@50+50", "wool@50+100", "wool@100+0", "wool@100+50", "wool@100+100"
+    ]  # fmt: skip
+    assert [one.cells["price_per_pack"] for one in made] == ["30"] * 3 + ["48"] * 3
+    assert {one.cells["weight_kg"] for one in made} == {"3"}
+    layers = [{"kind": "wool", "thickness_mm": "thickness"}, {"kind": "air", "thickness_mm": "gap"}]
+    assert filled_in(made[0], layers) == [{"kind": "wool", "thickness_mm": 50.0}]
+    assert filled_in(made[5], layers) == [
+        {"kind": "wool", "thickness_mm": 100.0},
+        {"kind": "air", "thickness_mm": 100.0},
+    ]
+
+
+@pytest.mark.parametrize(
+    ("line", "match"),
+    [
+        ('wool,1,1,50/100,0,1,30,3,""', "more than one value"),
+        ('wool,1,1,50/100,0,1,30/40/50,3,"[]"', "3 values for 2 thicknesses"),
+        ('wool,1,1,1/2/3/4/5/6/7/8,1/2/3/4/5/6/7/8,1,30,3,"[]"', "more than 40"),
+        (
+            "wool,1,1,50/100,,1,30,3,\"[{ kind = 'air', thickness_mm = 'gap' }]\"",
+            "gap_mm.*is empty",
+        ),
+    ],
+)
+def test_choices_that_do_not_match_are_refused(tmp_path, line, match):
+    with pytest.raises(CatalogueError, match=f"(?s)row 2.*({match})"):
+        read(tmp_path, f"{VARIED}{line}\n")
+
+
 @pytest.mark.slow
 def test_no_mangled_catalogue_ends_in_a_traceback():
     """5000 random mutations of a good file are read or refused, nothing else."""
