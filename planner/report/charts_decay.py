@@ -12,6 +12,7 @@ from planner.report.chart import Chart, Spec, finished, number, thinned
 from planner.report.palette import STYLES
 
 MOST_POINTS = 250
+MOST_FITTED = 100
 
 
 @dataclass(frozen=True, slots=True)
@@ -32,10 +33,21 @@ class DecayCurve:
     """Background noise relative to the steady level. [dB]"""
     label: str = "T"
     """Which evaluation, for example ``T20``."""
+    fitted_db: ArrayLike | None = None
+    """A fitted curve instead of a line, shape of `time_s`; NaN where it is not drawn. [dB]"""
+    t_s: float | None = None
+    """The time to print where it is not that of the line. [s]"""
 
     @property
     def reverberation_time(self) -> float:
-        """Time for 60 dB along the fitted line, NaN without one. [s]."""
+        """Time for 60 dB along the fitted line (or `t_s`), NaN without one. [s]."""
+        if self.t_s is not None:
+            return self.t_s
+        return self.line_time
+
+    @property
+    def line_time(self) -> float:
+        """Time for 60 dB along the fitted line, NaN without a line. [s]."""
         if not self.slope_db_per_s or self.slope_db_per_s >= 0:
             return float("nan")
         return -60.0 / self.slope_db_per_s
@@ -136,7 +148,7 @@ def _evaluated(curve: DecayCurve, span: tuple[float, float], x: Spec, y: Spec) -
     if curve.range_db is None:
         return []
     row = {"t": span[0], "end": span[1], "level": max(curve.range_db), "low": min(curve.range_db)}
-    if np.isfinite(curve.reverberation_time):
+    if np.isfinite(curve.line_time):
         slope = float(curve.slope_db_per_s or 0.0)
         row["t"] = max((max(curve.range_db) - curve.start_db) / slope, span[0])
         row["end"] = min((min(curve.range_db) - curve.start_db) / slope, span[1])
@@ -150,7 +162,13 @@ def _evaluated(curve: DecayCurve, span: tuple[float, float], x: Spec, y: Spec) -
 
 
 def _fit(curve: DecayCurve, lowest_db: float, x: Spec, y: Spec) -> list[Spec]:
-    if not np.isfinite(curve.reverberation_time):
+    if curve.fitted_db is not None:
+        time, level = np.asarray(curve.time_s, float), np.asarray(curve.fitted_db, float)
+        shown = np.flatnonzero(np.isfinite(level) & (level >= lowest_db))
+        keep = shown[thinned(len(shown), MOST_FITTED)]
+        values = [{"t": number(time[i], 5), "level": number(level[i], 3)} for i in keep]
+        return [_straight(values, STYLES["option-a"].colour, [6, 3], 2.0, x, y)] if values else []
+    if not np.isfinite(curve.line_time):
         return []
     slope = float(curve.slope_db_per_s or 0.0)
     ends = [0.0, (lowest_db - curve.start_db) / slope]

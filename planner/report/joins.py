@@ -10,9 +10,11 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from planner.bands import OCTAVES
+from planner.report.charts_decay import DecayCurve
 from planner.report.report_data import Alternative, InputFile, Measurement, ModeList
 
 if TYPE_CHECKING:
+    from planner.measure.figures import BandDecay
     from planner.measure.measured import Measured
     from planner.predict.prediction import Prediction
     from planner.predict.room_modes import RoomModes
@@ -45,6 +47,30 @@ def measurement_of(measured: Measured) -> Measurement:
         grade=f"{measured.grade} (ISO 3382-2)" if measured.grade else "",
         positions=positions,
         warnings=(*measured.warnings, *remarks),
+    )
+
+
+def decay_picture(band: BandDecay) -> DecayCurve:
+    """The decay of one band as `planner.report.charts.decay` draws it."""
+    curve = band.curve
+    line = next((entry for entry in curve.lines if entry[0] == band.used), None)
+    slope, start, span = None, 0.0, None
+    if line is not None:
+        _, start_s, start_db, end_s, end_db = line
+        slope = (end_db - start_db) / (end_s - start_s)
+        start, span = start_db - slope * start_s, (start_db, end_db)
+    whole = band.used == "whole-decay"
+    floor = band.floor_db - band.level_db
+    return DecayCurve(
+        time_s=curve.time_s,
+        level_db=curve.level_db,
+        range_db=span,
+        slope_db_per_s=slope,
+        start_db=start,
+        floor_db=floor if np.isfinite(floor) else None,
+        label="T by the whole decay" if whole else band.used.upper() or "T",
+        fitted_db=curve.fitted_db if whole else None,
+        t_s=float(band.t_s),
     )
 
 

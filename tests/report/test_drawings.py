@@ -11,6 +11,8 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from planner.absorption.library import Coefficients
+from planner.report.buying import placed_panels
 from planner.report.drawing_dimensions import PITCH, spread
 from planner.report.drawing_marks import Label, Outline, label_corners
 from planner.report.drawings import (
@@ -25,6 +27,9 @@ from planner.report.drawings import (
 from planner.report.dxf import to_dxf
 from planner.report.palette import DARK
 from planner.room.model import Room
+from planner.treat.catalogue import Catalogue, Product
+from planner.treat.option import Option
+from planner.treat.placement import place
 
 SVG = "{http://www.w3.org/2000/svg}"
 
@@ -237,6 +242,34 @@ def test_imperial_drawings_are_in_feet_and_inches():
     svg = to_svg(view(make_room(), "front", PANELS, units="ft"))
     assert "8&#x27; 6 3/8&quot;" in svg
     assert not re.search(r">2600<", svg)
+
+
+def test_panels_that_were_placed_overlap_nothing_on_the_drawing():
+    """Laid out by the placement around a door and a keep-out, then read back from the SVG."""
+    products = Catalogue(
+        [
+            Product(
+                id="a", description="a", unit="piece", width=0.6, height=1.2, thickness_mm=50.0,
+                gap_mm=0.0, mounting="direct", surfaces=("wall",), pack=1.0, price_per_pack=1.0,
+                currency="EUR", weight_kg=5.0, fire_class_declared="",
+                coefficients=Coefficients(np.full(8, 0.8), np.full(8, 0.1), np.zeros(8, bool)),
+            )
+        ]
+    )  # fmt: skip
+    wanted = {"name": "x", "item": [{"product": "a", "surface": "back", "count": 3}]}
+    room = make_room()
+    option = place(room, Option.model_validate(wanted), products).in_option(
+        Option.model_validate(wanted)
+    )
+    panels = placed_panels(option, products, room)
+    assert len(panels) == 3
+    svg = to_svg(view(room, "back", panels))
+    boxes = [
+        box for layer in ("panel", "opening", "keep-out") for box in rectangles(svg, layer).values()
+    ]
+    assert len(boxes) == 5
+    for (a, b, c, d), (e, f, g, h) in itertools.combinations(boxes, 2):
+        assert a >= g - 1e-3 or e >= c - 1e-3 or b >= h - 1e-3 or f >= d - 1e-3
 
 
 def test_unknown_paper_is_refused():

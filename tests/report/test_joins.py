@@ -1,18 +1,23 @@
 """What other folders work out reaches the report unchanged."""
 
 import hashlib
+from dataclasses import replace
 
 import numpy as np
 import pytest
 
 from planner.air import Air
+from planner.measure.figures import BandDecay
+from planner.measure.figures import DecayCurve as Curve
 from planner.measure.measured import Measured, RecordingNote
 from planner.predict.prediction import predict
 from planner.predict.room_modes import room_modes
 from planner.reconcile.calibrate import calibrate
+from planner.report.charts import decay
 from planner.report.joins import (
     alternative,
     calibrated_rows,
+    decay_picture,
     input_files,
     measurement_of,
     mode_list,
@@ -43,6 +48,29 @@ def test_measurement_keeps_its_numbers_grade_and_remarks(sample):
     assert "6 pairs" in found.positions
     assert "12 decays" in found.positions
     assert found.warnings == ("few positions", "a.wav: clipped")
+
+
+def test_decay_is_drawn_as_it_was_evaluated():
+    """A line of −60 dB in 0.3 s from 0 dB: from −5 to −25 dB it runs from 0.025 to 0.125 s."""
+    time = np.linspace(0.0, 0.4, 200)
+    level = np.maximum(-200 * time, -50.0)
+    nan = np.nan
+    band = BandDecay(
+        band_hz=500.0, edt_s=nan, t10_s=nan, t15_s=nan, t20_s=0.3, t30_s=nan, range_db=50.0,
+        level_db=-20.0, floor_db=-70.0, curvature_percent=nan, nonlinearity_permille=nan,
+        whole_s=0.31, whole_u_s=0.01, two_slopes_s=None, used="t20", reason="", t_s=0.3, u_s=0.01,
+        interval_s=(0.28, 0.32), flags=(),
+        curve=Curve(time, level, level + 0.1, (("t20", 0.025, -5.0, 0.125, -25.0),)),
+    )  # fmt: skip
+    drawn = decay_picture(band)
+    assert drawn.slope_db_per_s == pytest.approx(-200)
+    assert drawn.start_db == pytest.approx(0, abs=1e-9)
+    assert drawn.floor_db == pytest.approx(-50)
+    assert "T20 = 0.30 s" in decay(drawn).description
+    whole = decay_picture(replace(band, used="whole-decay", t_s=0.31))
+    assert "T by the whole decay = 0.31 s" in decay(whole).description
+    refused = decay_picture(replace(band, used="", t_s=nan))
+    assert "no reverberation time can be read" in decay(refused).description
 
 
 def test_modes_are_those_of_the_room(sample):
