@@ -90,3 +90,24 @@ class Decays:
     def column(self, field: str) -> Array:
         """One number of every band, shape ``(band,)``: ``decays.column("t_s")``."""
         return np.array([getattr(band, field) for band in self.each], float)
+
+
+def refused(nominal: float, reason: str, **known: float) -> BandDecay:
+    """A band without a value to use; what is `known` nevertheless is kept."""
+    nan = float("nan")
+    empty = np.zeros(0)
+    figures = dict.fromkeys(
+        ("edt_s", "t10_s", "t15_s", "t20_s", "t30_s", "range_db", "level_db", "floor_db",
+         "curvature_percent", "nonlinearity_permille", "whole_s", "whole_u_s", "t_s", "u_s"),
+        nan,
+    )  # fmt: skip
+    return BandDecay(
+        band_hz=nominal,
+        two_slopes_s=None,
+        used="",
+        reason=reason,
+        interval_s=(nan, nan),
+        flags=("refused",),
+        curve=DecayCurve(empty, empty, empty, ()),
+        **(figures | known),
+    )

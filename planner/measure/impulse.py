@@ -23,8 +23,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.errors import RecordingError
-from planner.measure.evaluation import LINE_SCATTER, SETTLE, drawn, refused, short_range
-from planner.measure.figures import BandDecay, DecayCurve, Decays
+from planner.measure.choice import LINE_SCATTER, short_range
+from planner.measure.decay_fits import SETTLE
+from planner.measure.figures import BandDecay, DecayCurve, Decays, refused
 from planner.measure.filterbank import OCTAVE_BANDS, BandEnergies, Bands, Samples, section_energies
 from planner.measure.lines import (
     CURVED_PERCENT,
@@ -32,6 +33,7 @@ from planner.measure.lines import (
     LADDER,
     NOISE_MARGIN_DB,
     Line,
+    drawn,
     grouped,
     line_between,
     longest,

@@ -130,3 +130,12 @@ def grouped(values: Array, size: int) -> Array:
     whole = len(values) // size
     means: Array = values[: whole * size].reshape(whole, size, *values.shape[1:]).mean(axis=1)
     return means
+
+
+def drawn(lines: dict[str, Line | None]) -> tuple[tuple[str, float, float, float, float], ...]:
+    """The lines as a chart takes them."""
+    return tuple(
+        (name, line.start_s, line.start_db, line.end_s, line.end_db)
+        for name, line in lines.items()
+        if line
+    )

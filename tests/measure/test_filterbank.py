@@ -8,6 +8,7 @@ import pytest
 
 from planner.bands import OCTAVE_RATIO
 from planner.errors import InputError
+from planner.measure.filter_shape import decay_widening
 from planner.measure.filterbank import (
     ALL_OCTAVE_BANDS,
     OCTAVE_BANDS,
@@ -228,3 +229,22 @@ def test_silence_and_short_input_give_no_surprise():
     assert np.all(quiet.energy == 0.0)
     assert band_energies(np.zeros(3, np.float32), 48000).energy.shape == (0, 8)
     assert band_energies(iter(()), 48000).energy.shape == (0, 8)
+
+
+def test_statistical_widths_are_the_integrals_of_the_shape():
+    """(∫|H|²)²/∫|H|⁴ of 1/((1+s)(1+s+s²)), s = jω for steady noise, jω + δ for a decay.
+
+    Numerically here; the definition is that of Bendat and Piersol, *Random Data*, section 8.3.
+    """
+    omega = np.linspace(-300.0, 300.0, 300001)  # over half the bandwidth, π·B
+
+    def width(delta):
+        s = 1j * omega + delta
+        power = np.abs(1.0 / ((1.0 + s) * (1.0 + s + s**2))) ** 2
+        return 0.5 * (omega[1] - omega[0]) * power.sum() ** 2 / (power**2).sum()
+
+    assert OCTAVE_BANDS.statistical_width / OCTAVE_BANDS.width == pytest.approx(width(0.0), 1e-3)
+    for resolved in (3.5, 5.0, 10.0, 50.0):
+        delta = 3.0 * np.log(10.0) / (np.pi * resolved)  # e^(−2δt) falls by 60 dB in T
+        expected = width(delta) / width(0.0)
+        assert decay_widening(resolved) == pytest.approx(expected, rel=5e-3)
