@@ -14,10 +14,6 @@ from typing import Any
 from planner.report.cutting import CuttingPlan, cut_lengths
 from planner.report.quantities import Quantities
 
-POROUS = ("porous", "wool", "foam", "fibre")
-AIR = ("air", "gap", "cavity")
-SHEETS = ("perforated", "slotted", "microperforated", "panel", "sheet", "membrane")
-
 
 @dataclass(frozen=True, slots=True)
 class Supplies:
@@ -84,8 +80,8 @@ class HandMade:
 
     @property
     def depth(self) -> float:
-        """Of the frame: all the wool. [m]."""
-        return sum(self.wool_mm) / 1000.0
+        """Of the frame: all the wool, and behind a sheet the closed air space too. [m]."""
+        return (sum(self.wool_mm) + (self.gap_mm if self.sheets else 0.0)) / 1000.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,22 +110,34 @@ def hand_made(
     *,
     units: str = "m",
 ) -> HandMade:
-    """Panels from the layers of a build-up (front to wall), as room files and catalogues give them."""
+    """Panels from the layers of a build-up (front to wall), as `planner.absorption.build_up` reads them."""
+    show = Quantities(units)
     wool, gap, sheets = [], 0.0, []
     for layer in layers:
-        kind = str(layer.get("kind") or layer.get("type") or layer.get("layer") or "").lower()
-        thickness = float(layer.get("thickness_mm") or layer.get("depth_mm") or 0.0)
-        if any(word in kind for word in POROUS):
+        kind = str(layer.get("layer", "")).lower()
+        thickness = float(layer.get("thickness_mm") or 0.0)
+        if kind == "porous":
             wool.append(thickness)
-        elif any(word in kind for word in AIR):
+        elif kind == "air":
             gap += thickness
-        elif any(word in kind for word in SHEETS):
-            sheets.append(
-                f"{kind} sheet, {Quantities(units).small(thickness)}"
-                if thickness
-                else f"{kind} sheet"
-            )
+        elif kind:
+            sheets.append(_sheet_name(layer, kind, thickness, show))
     return HandMade(product, width, height, count, tuple(wool), gap, tuple(sheets), not sheets)
+
+
+def _sheet_name(layer: Mapping[str, Any], kind: str, thickness: float, show: Quantities) -> str:
+    """``perforated sheet, 6 mm, holes 5 mm`` with the sizes that the layer gives."""
+    words = [f"{kind} sheet"]
+    if thickness:
+        words.append(show.small(thickness))
+    for key, name in (("hole_mm", "holes"), ("slot_mm", "slots"), ("spacing_mm", "spacing")):
+        if layer.get(key):
+            words.append(f"{name} {float(layer[key]):g} mm")
+    if layer.get("open_area"):
+        words.append(f"{100 * float(layer['open_area']):g} % open")
+    if layer.get("mass_kg_m2"):
+        words.append(f"{float(layer['mass_kg_m2']):g} kg/m²")
+    return ", ".join(words)
 
 
 def raw_goods(panels: Iterable[HandMade], supplies: Supplies | None = None) -> list[RawLine]:
@@ -144,7 +152,8 @@ def raw_goods(panels: Iterable[HandMade], supplies: Supplies | None = None) -> l
     """
     sold = supplies or Supplies()
     made = [panel for panel in panels if panel.count > 0]
-    gaps = sorted({panel.gap_mm for panel in made if panel.gap_mm > 0})
+    spaced = [panel for panel in made if panel.gap_mm > 0 and not panel.sheets]
+    gaps = sorted({panel.gap_mm for panel in spaced})
     depths = sorted({panel.depth for panel in made if panel.depth > 0})
     sheets = dict.fromkeys(name for panel in made for name in panel.sheets)
     wrapped = [panel for panel in made if panel.cloth]
@@ -154,7 +163,7 @@ def raw_goods(panels: Iterable[HandMade], supplies: Supplies | None = None) -> l
             _frames([panel for panel in made if panel.depth == depth], depth, sold)
             for depth in depths
         ),
-        *(_spacers([panel for panel in made if panel.gap_mm == gap], gap, sold) for gap in gaps),
+        *(_spacers([panel for panel in spaced if panel.gap_mm == gap], gap, sold) for gap in gaps),
         *([_cloth(wrapped, sold)] if wrapped else []),
         *(
             _sheets([panel for panel in made if name in panel.sheets], name, sold)

@@ -12,7 +12,7 @@ from planner.report.list_formats import list_document, to_csv, to_text, to_xlsx
 from planner.report.printing import write_list
 
 LAYERS = {
-    "wool-100": [{"kind": "porous", "thickness_mm": 100}, {"kind": "air", "thickness_mm": 50}]
+    "wool-100": [{"layer": "porous", "thickness_mm": 100}, {"layer": "air", "thickness_mm": 50}]
 }
 # Seven panels in packs of four at 120, four in packs of three at 75.50, 4.2 m² in packs of 1.5 m²
 # at 19.90: 2 · 120 + 2 · 75.5 + 3 · 19.9 = 450.70 by hand; the stand has no price.

@@ -20,7 +20,7 @@ from planner.report.report import report_document
 from planner.report.typeset import to_pdf
 
 LAYERS = {
-    "wool-100": [{"kind": "porous", "thickness_mm": 100}, {"kind": "air", "thickness_mm": 50}]
+    "wool-100": [{"layer": "porous", "thickness_mm": 100}, {"layer": "air", "thickness_mm": 50}]
 }
 MARKUP = [
     '#panic("x")', "*bold* _it_ `raw`", "$x^2$", "@label <label>", "// comment /* c */", "\\u{1F600}",

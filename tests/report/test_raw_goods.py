@@ -6,9 +6,9 @@ from planner.report.fixings import fixing_line, fixings_per_panel
 from planner.report.raw_goods import IMPERIAL, HandMade, Supplies, hand_made, raw_goods
 
 LAYERS = [
-    {"kind": "perforated", "thickness_mm": 12},
-    {"kind": "porous", "thickness_mm": 50},
-    {"kind": "air", "thickness_mm": 100},
+    {"layer": "perforated", "thickness_mm": 12, "hole_mm": 5},
+    {"layer": "porous", "thickness_mm": 50},
+    {"layer": "air", "thickness_mm": 100},
 ]
 
 
@@ -80,15 +80,16 @@ def test_sheets_hold_rows_and_columns_with_a_saw_cut_between():
     lines = raw_goods([hand_made("a", 1.2, 0.6, 9, LAYERS)])
     sheet = line(lines, "Perforated")
     assert sheet.amount == 3
-    assert not [one for one in lines if "cloth" in one.goods]
+    assert not [one for one in lines if "cloth" in one.goods or "Spacer" in one.goods]
+    assert "× 150 mm" in line(lines, "Frame").goods  # wool 50 mm and the closed air space of 100 mm
     exact = raw_goods([hand_made("a", 1.22, 0.61, 4, LAYERS)])  # 4 × 0.61 leaves no room to saw
     assert line(exact, "Perforated").amount == 2
 
 
 def test_layers_become_wool_gap_and_sheets():
     made = hand_made("a", 0.6, 1.2, 3, LAYERS)
-    assert (made.wool_mm, made.gap_mm, made.depth) == ((50.0,), 100.0, 0.05)
-    assert made.sheets == ("perforated sheet, 12 mm",)
+    assert (made.wool_mm, made.gap_mm, made.depth) == ((50.0,), 100.0, 0.15)
+    assert made.sheets == ("perforated sheet, 12 mm, holes 5 mm",)
 
 
 def test_imperial_list_has_no_metric_words():
@@ -97,7 +98,7 @@ def test_imperial_list_has_no_metric_words():
         for one in raw_goods([hand_made("a", 0.6, 1.2, 3, LAYERS, units="ft")], IMPERIAL)
     )
     assert " m " not in f"{texts} "
-    assert "mm" not in texts
+    assert "mm" not in texts.replace("holes 5 mm", "")  # drill sizes stay as ordered
     assert "m²" not in texts
 
 
