@@ -41,7 +41,7 @@ NEAR = 0.02
 def ask_others(
     task: Task,
     answer: Suggestion,
-    amounts: Array,
+    first: Found,
     directional: bool,
     simulation: Predictor | None,
     clock: Clock,
@@ -63,7 +63,7 @@ def ask_others(
         return SecondOpinion(
             opinions, False, f"the target is missed by the formula and by {_names(missed)}"
         )
-    corrected = _corrected(task, room, opinions, amounts, directional, simulation, clock, gap)
+    corrected = _corrected(task, room, opinions, first, directional, simulation, clock, gap)
     where = "; ".join(_where(opinion) for opinion in missed)
     if corrected is None:
         says = f"they do not agree: {where}; no list was found on which they do"
@@ -100,14 +100,14 @@ def _corrected(
     task: Task,
     room: RoomSurfaces,
     opinions: tuple[Opinion, ...],
-    amounts: Array,
+    first: Found,
     directional: bool,
     simulation: Predictor | None,
     clock: Clock,
     gap: float,
 ) -> Suggestion | None:
     """Solve again with corrected limits until the others agree; None where that does not happen."""
-    cuts: list[Cut] = []
+    cuts, amounts = list(first.cuts), first.amounts
     main = task.names[0]
     directions = directions_of(task) if directional else None
     axial = None

@@ -14,7 +14,7 @@ from planner.room.surfaces import RoomSurfaces
 from planner.treat.catalogue import FREE, Catalogue, Product
 from planner.treat.covers import Cover, merged
 from planner.treat.option import kind_of_surface
-from planner.treat.problem import Cap, Choice, Problem, footprint
+from planner.treat.problem import Cap, Choice, Problem, base_part, footprint
 
 FREE_SHARE = 0.10
 """Free-standing things take at most this share of the floor (a judgement, no source). [-]"""
@@ -58,14 +58,20 @@ def problem(
     priced = catalogue.is_priced
     _check_currency(catalogue, limits.currency)
     usable = _usable(catalogue, limits, priced, warnings)
-    most = _areas(surfaces, limits, area_limits or {})
+    if limits.cover_first_reflections and not covers:
+        warnings.append(
+            "first reflections are to be covered, but none are known: give seat and loudspeakers"
+        )
+    for cover in covers:
+        base_part(surfaces, cover.surface)
+    most, possible = _areas(surfaces, limits, area_limits or {})
     groups = _groups(surfaces, limits)
     choices = tuple(
         choice
         for product in usable
-        for choice in _choices(product, groups, most, limits, piece_limits or {})
+        for choice in _choices(product, groups, most, possible, limits, piece_limits or {})
     )
-    caps = tuple(_caps(choices, most, limits, surfaces))
+    caps = tuple(_caps(choices, most, possible, limits, surfaces))
     choices = _bounded(choices, caps)
     products = tuple({choice.product.id: choice.product for choice in choices}.values())
     order = {product.id: index for index, product in enumerate(products)}
@@ -134,8 +140,11 @@ def _depth_allowed(product: Product, limits: TreatmentLimits) -> bool:
 
 def _areas(
     surfaces: RoomSurfaces, limits: TreatmentLimits, given: Mapping[str, float]
-) -> dict[str, float]:
-    """Most that may be mounted on each surface: its bare part, the cover limit, the placement's."""
+) -> tuple[dict[str, float], dict[str, float]]:
+    """Most that may be mounted on each surface, and most that could be if the cover was not limited.
+
+    A surface offers its bare part, and no more than the placement found room for.
+    """
     names = dict.fromkeys(part.on for part in surfaces.parts)
     mentioned = (
         given,
@@ -149,14 +158,12 @@ def _areas(
             raise OptionError(
                 f"there is no surface {name!r}", cure=f"This room has {', '.join(names)}."
             )
-    most = {}
+    most, possible = {}, {}
     for name in names:
         bare = surfaces.area_on(name, "base")
-        shared = bare * limits.max_cover.get(name, 1.0)
-        most[name] = max(0.0, min(bare, shared, given.get(name, np.inf)))
-        if name in limits.keep_clear:
-            most[name] = 0.0
-    return most
+        possible[name] = max(0.0, min(bare, given.get(name, np.inf)))
+        most[name] = min(possible[name], bare * limits.max_cover.get(name, 1.0))
+    return most, possible
 
 
 def _groups(surfaces: RoomSurfaces, limits: TreatmentLimits) -> list[tuple[str, ...]]:
@@ -171,6 +178,7 @@ def _choices(
     product: Product,
     groups: Sequence[tuple[str, ...]],
     most: Mapping[str, float],
+    possible: Mapping[str, float],
     limits: TreatmentLimits,
     pieces: Mapping[tuple[str, str], float],
 ) -> list[Choice]:
@@ -182,20 +190,28 @@ def _choices(
     for group in groups:
         if not all(kind_of_surface(on) in product.surfaces for on in group):
             continue
+        if any(on in limits.keep_clear for on in group):
+            continue
         if product.weight_kg is None and any(on in limits.max_weight_kg for on in group):
             continue
-        fits = [
-            min(most[on] / product.piece_area, pieces.get((on, product.id), np.inf)) for on in group
-        ]
-        upper = min(fits) if product.unit == "m2" else float(np.floor(min(fits) + 1e-9))
-        if upper > 0:
-            found.append(Choice(product, group, upper))
+        upper, fits = (
+            min(
+                min(areas[on] / product.piece_area, pieces.get((on, product.id), np.inf))
+                for on in group
+            )
+            for areas in (most, possible)
+        )
+        if product.unit != "m2":
+            upper, fits = float(np.floor(upper + 1e-9)), float(np.floor(fits + 1e-9))
+        if fits > 0:
+            found.append(Choice(product, group, upper, fits))
     return found
 
 
 def _caps(
     choices: Sequence[Choice],
     most: Mapping[str, float],
+    possible: Mapping[str, float],
     limits: TreatmentLimits,
     surfaces: RoomSurfaces,
 ) -> list[Cap]:
@@ -205,7 +221,7 @@ def _caps(
         if not here.any():
             continue
         faces = np.array([choice.product.piece_area for choice in choices])
-        caps.append(Cap("area", name, here * faces, area))
+        caps.append(Cap("area", name, here * faces, area, possible[name]))
         if name in limits.max_weight_kg:
             heavy = np.array([choice.product.weight_kg or 0.0 for choice in choices])
             caps.append(Cap("weight", name, here * heavy, limits.max_weight_kg[name]))

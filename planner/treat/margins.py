@@ -111,6 +111,7 @@ def robustly(
         if found is None:
             high, likely = z, 1.0
         else:
+            found = replace(found, cuts=tuple(cuts))
             likely, unknown = judge(found.amounts)
             likeliest = max(likeliest, (likely, found), key=lambda pair: pair[0])
             more = _tangents(problem, windows, found.amounts, unknown)

@@ -135,11 +135,18 @@ def suggest(
     found = solve(task, clock, gap)
     answer = describe(task, found)
     if explain and answer.status == Status.INFEASIBLE:
-        more = relaxations(task.problem, task.windows, task.judged, catalogue, Clock(time_limit))
+        more = relaxations(
+            task.problem,
+            task.windows,
+            task.judged,
+            catalogue,
+            Clock(time_limit),
+            answer.short_bands,
+        )
         answer = replace(answer, relaxations=more)
     if second_opinion or simulation is not None:
         opinion = ask_others(
-            task, answer, found.amounts, second_opinion, simulation, Clock(time_limit), gap
+            task, answer, found, second_opinion, simulation, Clock(time_limit), gap
         )
         answer = _agreed(answer, opinion)
     return replace(answer, seconds=time.monotonic() - began)
@@ -150,7 +157,8 @@ def _agreed(answer: Suggestion, opinion: SecondOpinion | None) -> Suggestion:
     corrected = opinion.corrected if opinion is not None else None
     if opinion is None or corrected is None or corrected.cost > answer.cost + 1e-9:
         return replace(answer, second_opinion=opinion)
-    if answer.confidence is not None and corrected.probability < answer.confidence:
+    wanted = min(answer.confidence or 0.0, answer.probability)
+    if answer.confidence is not None and corrected.probability < wanted - 0.005:
         return replace(answer, second_opinion=opinion)
     others = corrected.second_opinion
     assert others is not None

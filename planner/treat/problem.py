@@ -32,7 +32,9 @@ class Choice:
     product: Product
     on: tuple[str, ...]
     upper: float
-    """Most that fit on each surface: pieces, or square metres."""
+    """Most that may go on each surface: pieces, or square metres."""
+    fits: float = np.inf
+    """Most that would fit if the room file limited neither cover nor weight."""
 
     @property
     def is_continuous(self) -> bool:
@@ -50,6 +52,8 @@ class Cap:
     weights: Array
     """Per unit of each choice, shape ``(choice,)``."""
     most: float
+    possible: float = np.inf
+    """What the limit could at most be raised to."""
 
 
 @dataclass(frozen=True, slots=True)

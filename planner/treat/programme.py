@@ -2,6 +2,11 @@
 
 from __future__ import annotations
 
+import contextlib
+import ctypes
+import os
+import threading
+from collections.abc import Iterator
 from dataclasses import dataclass, field
 from enum import StrEnum
 from typing import Any
@@ -17,6 +22,35 @@ SLACK = 2e-6
 
 MOST_SHORT = 100.0
 """Bound on a relative shortfall: a bound on every unknown keeps the solver's presolve safe. [-]"""
+
+
+@contextlib.contextmanager
+def silenced_stdout() -> Iterator[None]:
+    """Keep compiled code from writing to standard output while it works.
+
+    HiGHS in scipy 1.17 prints a line of its own now and then, whatever it is told, and a command
+    with ``--json`` must print nothing but its object. Where there is no standard output to keep
+    clean (a program without a console) nothing is done.
+    """
+    with _STDOUT:
+        try:
+            kept = os.dup(1)
+            nowhere = os.open(os.devnull, os.O_WRONLY)
+        except OSError:
+            yield
+            return
+        try:
+            os.dup2(nowhere, 1)
+            yield
+        finally:
+            with contextlib.suppress(OSError, AttributeError, TypeError):
+                ctypes.CDLL(None).fflush(None)  # what C still holds back must not come later
+            os.dup2(kept, 1)
+            os.close(kept)
+            os.close(nowhere)
+
+
+_STDOUT = threading.RLock()
 
 
 class Status(StrEnum):
@@ -131,12 +165,13 @@ class Programme:
                 options=options,
             )
 
-        result = run()
-        if result.status == 2:
-            # Its presolve calls some possible programmes infeasible (seen with HiGHS in scipy
-            # 1.17 on rows that a solution meets to the last digit): ask again without.
-            options["presolve"] = False
+        with silenced_stdout():
             result = run()
+            if result.status == 2:
+                # Its presolve calls some possible programmes infeasible (seen with HiGHS in scipy
+                # 1.17 on rows that a solution meets to the last digit): ask again without.
+                options["presolve"] = False
+                result = run()
         return _outcome(
             result.status, result.x, result.fun, getattr(result, "mip_dual_bound", None)
         )

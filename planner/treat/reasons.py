@@ -101,11 +101,13 @@ def relaxations(
     judged: NDArray[np.bool_],
     catalogue: Catalogue,
     clock: Clock,
+    short: Sequence[ShortBand],
 ) -> tuple[Relaxation, ...]:
     """Every single limit that, given up, lets the target be met, and how far it must be given up.
 
-    Numbers are least amounts, proven where time allowed. Where no single limit helps, budget and
-    all areas are given up together.
+    Numbers are least amounts, proven where time allowed; the one with the cheapest list comes
+    first. Where no single limit helps, budget and all areas are given up together. Last comes what
+    the target itself would have to allow for the list at hand, whose short bands are `short`.
     """
     found = [
         *_by_amount(asked, windows, judged, clock),
@@ -113,7 +115,18 @@ def relaxations(
     ]
     if not found:
         found = _together(asked, windows, judged, clock)
-    return tuple(found)
+    found.sort(key=lambda one: np.inf if one.cost is None else one.cost)
+    return (*found, *_target(short))
+
+
+def _target(short: Sequence[ShortBand]) -> list[Relaxation]:
+    """The times that the closest list reaches, as limits."""
+    if not short:
+        return []
+    says = "accept " + ", ".join(f"{band.reached_s:.2f} s at {band.band_hz} Hz" for band in short)
+    farthest = max(abs(band.reached_s - band.limit_s) for band in short)
+    where = ", ".join(str(band.band_hz) for band in short)
+    return [Relaxation("target", where, farthest, "s", says)]
 
 
 def _by_amount(
@@ -140,8 +153,7 @@ def _candidates(asked: Problem) -> list[tuple[str, str, Ease]]:
     if limits.budget is not None and asked.is_priced:
         found.append(("budget", "", Ease(budget=True)))
     for cap in asked.caps:
-        bare = asked.surfaces.area_on(cap.surface, "base")
-        if cap.kind == "area" and cap.most < bare - 1e-6:
+        if cap.kind == "area" and cap.most < cap.possible - 1e-6:
             found.append(("area", cap.surface, Ease(area=(cap.surface,))))
         if cap.kind == "weight":
             found.append(("weight", cap.surface, Ease(weight=(cap.surface,))))

@@ -34,6 +34,8 @@ class Found:
     """Of the cost, proven. [-]"""
     dropped: tuple[str, ...] = ()
     """Limits that no list can keep and that were left out: ``covers``, ``evenness``."""
+    cuts: tuple[Cut, ...] = ()
+    """Margins that it was found with."""
 
 
 class Clock:

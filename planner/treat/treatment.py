@@ -177,16 +177,13 @@ def _most_packs(problem: Problem, upper: Array) -> Array:
 
 
 def _eased_upper(problem: Problem, ease: Ease, upper: Array) -> Array:
-    """Largest amounts once some caps are given up: the bare surface still ends somewhere."""
-    room = problem.surfaces
-    found = upper.copy()
-    for number, choice in enumerate(problem.choices):
-        if not set(choice.on) & {*ease.area, *ease.weight}:
-            continue
-        bare = min(room.area_on(on, "base") for on in choice.on)
-        most = bare / choice.product.piece_area
-        found[number] = most if choice.is_continuous else np.floor(most + 1e-9)
-    return found
+    """Largest amounts once some caps are given up: what fits is still an end."""
+    freed = {*ease.area, *ease.weight}
+    found = [
+        choice.fits if freed & set(choice.on) else most
+        for choice, most in zip(problem.choices, upper, strict=True)
+    ]
+    return np.array(found, float)
 
 
 def _band_rows(
@@ -222,10 +219,7 @@ def _cap_rows(
         terms: list[tuple[NDArray[np.intp], Array | float]] = [(amounts, cap.weights)]
         passed = ease.area if cap.kind == "area" else ease.weight
         if cap.surface in passed:
-            most = np.inf
-            if cap.kind == "area":
-                most = problem.surfaces.area_on(cap.surface, "base") - cap.most
-            extra = programme.unknowns(1, high=max(0.0, most))
+            extra = programme.unknowns(1, high=max(0.0, cap.possible - cap.most))
             eased.append(int(extra[0]))
             terms.append((extra, -1.0))
         programme.row(*terms, high=cap.most)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import ctypes
 import json
 import math
 
@@ -240,7 +241,9 @@ def test_the_bass_that_no_product_reaches_is_said_first():
     assert [band.band_hz for band in short.short_bands] == [125]
     assert short.items, "the hopeless band must not keep the others from being treated"
     assert short.short_bands[0].missing_m2 > 5 > short.short_bands[0].largest_possible_m2
-    assert short.relaxations == ()
+    (only,) = short.relaxations
+    assert only.limit == "target"
+    assert f"{short.short_bands[0].reached_s:.2f} s at 125 Hz" in only.says
 
 
 def test_assumed_bands_are_shown_but_do_not_decide():
@@ -260,8 +263,40 @@ def test_assumed_bands_are_shown_but_do_not_decide():
 def test_unknown_surfaces_and_confidences_are_refused():
     with pytest.raises(OptionError, match="no surface 'roof'"):
         ask([panel()], {"max_cover": {"roof": 0.5}})
+    with pytest.raises(OptionError, match="no surface 'roof'"):
+        ask([panel()], covers=[Cover("roof", 0, 0, 1, 1)])
     with pytest.raises(OptionError, match="confidence of 2"):
         ask([panel()], confidence=2.0)
+
+
+def test_a_closed_surface_is_opened_as_far_as_needed():
+    """Cover limits of nothing leave no panel to choose; the advice is still given and true."""
+    surfaces = ("floor", "ceiling", "front", "back", "left", "right")
+    limits = {"max_cover": dict.fromkeys(surfaces, 0.0)}
+    short = ask([panel()], limits, explain=True)
+    advice = next(r for r in short.relaxations if r.limit == "area" and r.where == "ceiling")
+    opened = {"max_cover": limits["max_cover"] | {"ceiling": (advice.amount + 1e-6) / 20.0}}
+    assert ask([panel()], opened).status == "optimal"
+
+
+def test_advice_keeps_to_what_the_placement_found_room_for():
+    """More than fits round doors and windows must not be advised."""
+    limits = {"max_cover": {"ceiling": 0.1}, "keep_clear": ("floor", "front", "back", "left")}
+    short = ask([panel()], limits, area_limits={"ceiling": 3.0, "right": 0.0}, explain=True)
+    assert short.status == "infeasible"
+    assert not [r for r in short.relaxations if r.limit == "area"]
+
+
+def test_nothing_but_the_answer_reaches_standard_output(capfd):
+    """Lines that compiled code prints by itself do not get into ``--json``."""
+    from planner.treat.programme import silenced_stdout
+
+    libc = ctypes.CDLL(None)
+    with silenced_stdout():
+        libc.puts(b"chatter")
+    print("answer", flush=True)
+    libc.fflush(None)
+    assert capfd.readouterr().out == "answer\n"
 
 
 def test_no_time_still_answers():
