@@ -14,7 +14,7 @@ from planner.report.document import Builder, Row, Section, drawing_page, picture
 from planner.report.drawings import Panel, sheets, surface_title
 from planner.report.list_formats import list_sections
 from planner.report.quantities import NONE, Quantities, money, seconds
-from planner.report.report_client import after_times, now_times
+from planner.report.report_client import after_times, now_assumed, now_times
 from planner.report.report_data import ReportData, band_heads
 from planner.room.lengths import METRES_PER
 
@@ -66,7 +66,11 @@ def option_sections(data: ReportData) -> list[Section]:
         )
     builder.table(("T (s)", *band_heads()), times, right=tuple(range(1, 9)), wide=0, small=True)
     now = now_times(data)
-    untreated = None if now is None else charts.Series("Now", now, "untreated")
+    untreated = (
+        None
+        if now is None
+        else charts.Series("Now", now, "untreated", assumed_hz=now_assumed(data))
+    )
     series = [charts.Series(option.name, option.predicted, "option-a") for option in data.options]
     small = [picture(c) for c in charts.side_by_side(series, data.target, untreated=untreated)]
     builder.blocks += [Row(tuple(small[n : n + 2])) for n in range(0, len(small), 2)]
@@ -113,7 +117,7 @@ def treatment_sections(data: ReportData) -> list[Section]:
                 )
             ]
         if now is not None:
-            series.insert(0, charts.Series("Now", now, "untreated"))
+            series.insert(0, charts.Series("Now", now, "untreated", assumed_hz=now_assumed(data)))
         builder.chart(charts.reverberation(series, data.target, title="Before and after"))
     if data.suggestion is not None:
         chosen = data.suggestion

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from planner.bands import OCTAVES
 from planner.report import charts
@@ -21,10 +22,10 @@ def client_page(data: ReportData) -> list[Section]:
     now, after = now_times(data), after_times(data)
     builder.words(*_sentences(data, now, after))
     if now is not None:
-        series = [charts.Series("Now", now, "untreated", assumed_hz=_assumed(data))]
+        series = [charts.Series("Now", now, "untreated", assumed_hz=now_assumed(data))]
         if after is not None:
             series.append(
-                charts.Series("After treatment", after, "option-a", assumed_hz=_assumed(data))
+                charts.Series("After treatment", after, "option-a", assumed_hz=after_assumed(data))
             )
         chart = charts.reverberation(
             series, data.target, title="How long the room rings", height=165
@@ -47,13 +48,35 @@ def client_page(data: ReportData) -> list[Section]:
 
 def now_times(data: ReportData) -> Array | None:
     """Measured where there is a measurement in octaves, else predicted. [s]."""
+    predicted = None if data.prediction is None else np.asarray(data.prediction.time, float)
+    if data.measurement is None or not is_measured(data).any():
+        return predicted
+    times = np.asarray(data.measurement.t_s, float)
+    return times if predicted is None else np.where(np.isfinite(times), times, predicted)
+
+
+def is_measured(data: ReportData) -> NDArray[np.bool_]:
+    """Octaves whose time now was measured, shape ``(band,)``."""
     measured = data.measurement
-    if measured is not None and tuple(measured.bands_hz) == OCTAVES:
-        times = np.asarray(measured.t_s, float)
-        if data.prediction is not None:
-            times = np.where(np.isfinite(times), times, data.prediction.time)
-        return times
-    return None if data.prediction is None else np.asarray(data.prediction.time, float)
+    if measured is None or tuple(measured.bands_hz) != OCTAVES:
+        return np.zeros(len(OCTAVES), bool)
+    known: NDArray[np.bool_] = np.isfinite(np.asarray(measured.t_s, float))
+    return known
+
+
+def now_assumed(data: ReportData) -> tuple[int, ...]:
+    """Octaves whose time now rests on an assumption. [Hz]."""
+    if data.prediction is None:
+        return ()
+    known = dict(zip(OCTAVES, is_measured(data), strict=True))
+    return tuple(hz for hz in data.prediction.assumed_hz if not known[hz])
+
+
+def after_assumed(data: ReportData) -> tuple[int, ...]:
+    """Octaves whose time after treatment rests on an assumption. [Hz]."""
+    if data.after is not None:
+        return tuple(data.after.assumed_hz)
+    return () if data.suggestion is None else tuple(data.suggestion.assumed_hz)
 
 
 def after_times(data: ReportData) -> Array | None:
@@ -71,7 +94,11 @@ def middle(times: Array) -> float:
 def _sentences(data: ReportData, now: Array | None, after: Array | None) -> list[str]:
     said = []
     if now is not None:
-        how = "measured" if data.measurement is not None else "predicted"
+        how = (
+            "measured"
+            if is_measured(data)[[OCTAVES.index(hz) for hz in SPEECH]].all()
+            else "predicted"
+        )
         said.append(
             f"Now: speech in this room rings for {middle(now):.2f} s ({how}, mean of 500 Hz and 1 kHz)."
         )
@@ -117,26 +144,21 @@ def _doubt(data: ReportData) -> str:
 def _rows(data: ReportData, now: Array | None, after: Array | None) -> list[tuple[str, ...]]:
     if now is None and after is None:
         return []
+    measured = is_measured(data)
     rows: list[tuple[str, ...]] = []
     for n, hz in enumerate(OCTAVES):
         limits = "–"
         if data.target is not None:
-            low, high = float(data.target.low[n]), float(data.target.high[n])
-            limits = limits_text(low, high)
-        mark = " (assumed)" if hz in _assumed(data) else ""
-        rows.append(
-            (
-                f"{hz} Hz{mark}",
-                seconds(None if now is None else now[n]),
-                seconds(None if after is None else after[n]),
-                limits,
-            )
-        )
+            limits = limits_text(float(data.target.low[n]), float(data.target.high[n]))
+        before, treated = (seconds(None if one is None else one[n]) for one in (now, after))
+        if hz in now_assumed(data):
+            before += " (assumed)"
+        elif measured.any() and not measured[n]:
+            before += " (predicted)"
+        if hz in after_assumed(data):
+            treated += " (assumed)"
+        rows.append((f"{hz} Hz", before, treated, limits))
     return rows
-
-
-def _assumed(data: ReportData) -> tuple[int, ...]:
-    return () if data.prediction is None else tuple(data.prediction.assumed_hz)
 
 
 def _schroeder(data: ReportData) -> str:

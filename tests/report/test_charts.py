@@ -1,5 +1,6 @@
 """Charts: the numbers drawn are the numbers given, and the conventions of band charts hold."""
 
+import functools
 import json
 import math
 import types
@@ -39,6 +40,12 @@ def rows_of(spec):
     return rows
 
 
+@functools.cache
+def all_charts():
+    """Made once: the list is read by every case below."""
+    return tuple(every_chart())
+
+
 def every_chart():
     time = np.arange(0, 2, 0.0005)
     hz = np.linspace(30, 300, 3000)
@@ -67,7 +74,7 @@ def every_chart():
 @pytest.mark.parametrize("number", range(13))
 def test_every_chart_is_valid_small_and_says_what_it_shows(number):
     """Altair's own schema accepts it; strict JSON has no NaN; a sentence and a table come along."""
-    chart = list(every_chart())[number]
+    chart = all_charts()[number]
     chart.altair(DARK)
     json.dumps(chart.vega_lite(LIGHT), allow_nan=False)
     assert len(rows_of(chart.spec)) <= MOST_ROWS
