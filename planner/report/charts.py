@@ -4,19 +4,19 @@
 `Chart.description` the accessible sentence, `to_svg` a picture without any browser.
 """
 
+from planner.report.band_series import Series, TargetSteps
+from planner.report.band_words import target_sentence
 from planner.report.chart import Chart, config, to_svg
 from planner.report.charts_bands import (
-    Series,
-    TargetSteps,
     absorption,
     formula_range,
     measured_against_predicted,
     reverberation,
-    target_sentence,
 )
 from planner.report.charts_choice import front, side_by_side
 from planner.report.charts_decay import DecayCurve, decay
-from planner.report.charts_modes import mode_count, mode_pressure, modes, response
+from planner.report.charts_modes import mode_count, modes
+from planner.report.charts_seat import mode_pressure, response
 from planner.report.palette import DARK, LIGHT, STYLES, Theme
 
 __all__ = [

@@ -8,8 +8,10 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from planner.bands import OCTAVES
+from planner.report.band_layers import axis_top
+from planner.report.band_series import Series, TargetSteps
 from planner.report.chart import Chart, Spec, finished, number, numbers, shortened
-from planner.report.charts_bands import Series, TargetSteps, axis_top, reverberation
+from planner.report.charts_bands import reverberation
 from planner.report.palette import STYLES
 
 

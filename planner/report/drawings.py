@@ -10,17 +10,9 @@ from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 
 from planner.report.drawing_marks import Drawing
+from planner.report.drawing_parts import PLAN, Panel, corner_name, surface_title
 from planner.report.drawing_svg import MARGIN, to_screen_svg, to_svg
-from planner.report.drawing_views import (
-    PLAN,
-    Panel,
-    ceiling_plan,
-    corner_name,
-    elevation,
-    plan,
-    surface_title,
-    view,
-)
+from planner.report.drawing_views import ceiling_plan, elevation, plan, view
 from planner.report.palette import LIGHT, Theme
 from planner.room.model import Room
 
