@@ -56,7 +56,7 @@ def commands(folder: str) -> list[list[str]]:
         ["noise", f"{folder}/out/pink.wav", "--room", folder],
         ["measure", f"{folder}/recordings", "-o", measured, "--room", folder],
         ["compare", folder, measured],
-        ["suggest", folder, "--measured", measured, "-o", option],
+        ["suggest", folder, "--measured", measured, "--confidence", "0.8", "-o", option],
         ["predict", folder, "--measured", measured, "--option", option],
         ["buy", folder, option, "-o", f"{folder}/out/list.pdf"],
         ["report", folder, "--option", option, "--measured", measured, "-o", f"{folder}/out/report.pdf"],

@@ -236,10 +236,9 @@ def listed(values: Sequence[float] | Array) -> list[float | None]:
 
 def in_words(probability: float) -> str:
     """A probability of being inside the target, as a practitioner would say it."""
-    for least, words in ((0.95, "inside"), (0.8, "likely inside"), (0.2, "unclear")):
-        if probability >= least:
-            return words
-    return "likely outside" if probability >= 0.05 else "outside"
+    if probability >= 0.8:
+        return "likely"
+    return "unclear" if probability >= 0.2 else "unlikely"
 
 
 def _largest(shares: dict[str, Array]) -> list[str | None]:
@@ -275,7 +274,7 @@ def _verdicts(prediction: Prediction) -> list[str]:
         if parts:
             lines.append(f"Outside the target, {direction}: {', '.join(parts)}.")
     if not lines and prediction.judged.any():
-        lines.append("Inside the target in every judged band.")
+        lines.append("Inside the target in every judged band, as far as the coefficients hold.")
     skipped = [
         str(hz)
         for hz, limited, judged in zip(OCTAVES, target.judged, prediction.judged, strict=True)
