@@ -30,6 +30,7 @@ _PLACE = {
     "to_html": "html",
     "to_pdf": "typeset",
     "write_document": "printing",
+    "write_drawings": "printing",
     "write_list": "printing",
 }
 

@@ -6,19 +6,21 @@ beside it, and the answer says so.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
 from planner.errors import InputError, MissingPartError
 from planner.report.buying import BuyingList
-from planner.report.document import Document
-from planner.report.drawings import PAPERS
+from planner.report.document import Document, drawing_page
+from planner.report.drawings import PAPERS, Panel, sheets
 from planner.report.list_formats import list_document, to_csv, to_text, to_xlsx
+from planner.room.model import Room
 from planner.storage import write_atomically
 
 LIST_ENDINGS = (".pdf", ".html", ".csv", ".xlsx", ".txt")
 DOCUMENT_ENDINGS = (".pdf", ".html")
+DRAWING_ENDINGS = (".dxf", ".pdf", ".html")
 
 
 @dataclass(frozen=True, slots=True)
@@ -71,6 +73,58 @@ def write_list(
         ".xlsx": lambda: to_xlsx(buying, timestamp=timestamp),
     }
     return Written(write_atomically(target, writers[ending]()))
+
+
+def write_drawings(
+    path: str | Path,
+    room: Room,
+    panels: Sequence[Panel],
+    *,
+    paper: str = "a4",
+    units: str = "m",
+    timestamp: int = 0,
+) -> Written:
+    """Write plan, ceiling and every wall as DXF, PDF or HTML, by the file's ending.
+
+    Parameters
+    ----------
+    path
+        Ends in ``.dxf``, ``.pdf`` or ``.html``.
+    room
+        The room.
+    panels
+        Panels in their places, numbered as on the list.
+    paper
+        ``a4``, ``a3`` or ``us-letter``; DXF is in true size whatever the paper.
+    units
+        ``m`` or ``ft``.
+    timestamp
+        The file's own date, from the input. [s since 1970]
+
+    Raises
+    ------
+    InputError
+        Another ending, an unknown paper, or a place that cannot be written to.
+    """
+    target = Path(path)
+    ending = _ending(target, DRAWING_ENDINGS)
+    _check_paper(paper)
+    drawn = sheets(room, panels, paper=paper, units=units)
+    if ending == ".dxf":
+        from planner.report.dxf import to_dxf
+
+        return Written(write_atomically(target, to_dxf([sheet.drawing for sheet in drawn])))
+    return write_document(
+        target,
+        Document(
+            title="Drawings",
+            subtitle=room.name,
+            sections=tuple(drawing_page(sheet) for sheet in drawn),
+            paper=paper,
+            timestamp=timestamp,
+            footer=f"Drawings, {room.name}",
+        ),
+    )
 
 
 def write_document(path: str | Path, document: Document) -> Written:

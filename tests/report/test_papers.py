@@ -6,6 +6,7 @@ import re
 import sys
 from html.parser import HTMLParser
 
+import ezdxf
 import pypdf
 import pytest
 
@@ -15,7 +16,7 @@ from planner.report.glyphs import code_points, covered, printable
 from planner.report.html import to_html
 from planner.report.list_formats import list_document
 from planner.report.palette import FONTS
-from planner.report.printing import write_document, write_list
+from planner.report.printing import write_document, write_drawings, write_list
 from planner.report.report import report_document
 from planner.report.typeset import to_pdf
 
@@ -245,6 +246,21 @@ def test_wrong_endings_and_papers_are_refused(sample, tmp_path):
     (tmp_path / "file").write_text("")
     with pytest.raises(InputError, match="cannot be written"):
         write_document(tmp_path / "file" / "a.html", Document("t", "s", ()))
+
+
+def test_drawings_alone_are_written_for_the_fitter_and_the_joiner(sample, tmp_path):
+    data = sample.report()
+    for ending in ("dxf", "pdf", "html"):
+        written = write_drawings(tmp_path / f"drawings.{ending}", data.room, data.panels)
+        assert written.path.stat().st_size > 1000
+    pdf = (tmp_path / "drawings.pdf").read_bytes()
+    text = text_of(pdf)
+    assert all(f"Drawing: {name}" in text for name in ("plan", "left wall", "reflected ceiling"))
+    assert sum("Drawing: " in page.extract_text() for page in pages_of(pdf)) == 6
+    layouts = ezdxf.readfile(tmp_path / "drawings.dxf").modelspace()
+    assert len(layouts.query('LWPOLYLINE[layer=="PANELS"]')) == len(data.panels)
+    with pytest.raises(InputError, match=r"\.dwg is no kind of file"):
+        write_drawings(tmp_path / "drawings.dwg", data.room, data.panels)
 
 
 def test_picture_has_its_words_in_the_pdf(sample):

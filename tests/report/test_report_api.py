@@ -16,7 +16,7 @@ def test_public_names_are_these():
         "Acceptance", "Alternative", "BuyingList", "Chart", "Document", "Measurement", "ModeList",
         "Panel", "ReportData", "Written", "acceptance_document", "buying_list", "judge",
         "list_document", "placed_panels", "report_document", "to_dxf", "to_html", "to_pdf",
-        "write_document", "write_list",
+        "write_document", "write_drawings", "write_list",
     ]  # fmt: skip
 
 
