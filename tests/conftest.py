@@ -1,5 +1,7 @@
 """Fixtures that every folder of tests shares."""
 
+import contextlib
+import io
 import os
 from pathlib import Path
 
@@ -22,3 +24,14 @@ def recordings_dir() -> Path:
             pytest.fail(message)
         pytest.skip(message)
     return RECORDINGS
+
+
+@pytest.fixture(scope="session")
+def demo_project(tmp_path_factory) -> Path:
+    """The invented project after its own loop; tests read it and change nothing in it."""
+    from planner.cli import main
+
+    place = tmp_path_factory.mktemp("demo") / "net-loft"
+    with contextlib.redirect_stdout(io.StringIO()), contextlib.redirect_stderr(io.StringIO()):
+        assert main(["demo", str(place)]) == 0
+    return place

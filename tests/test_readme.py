@@ -16,11 +16,9 @@ spec.loader.exec_module(readme)
 NUMBER = re.compile(r"[-+]?\d+(?:\.\d+)?")
 
 
-@pytest.fixture(scope="module")
-def folder(tmp_path_factory):
-    place = tmp_path_factory.mktemp("readme")
-    readme.prepare(place)
-    return place
+@pytest.fixture
+def folder(demo_project):
+    return demo_project.parent
 
 
 def lines(text):
@@ -63,7 +61,7 @@ def test_every_command_of_the_readme_exists():
 
     commands = {(info.name or info.callback.__name__) for info in app.registered_commands}
     text = readme.README.read_text(encoding="utf-8")
-    used = {match for match in re.findall(r"`planner ([a-z]+)", text)}
+    used = set(re.findall(r"`planner ([a-z]+)", text))
     assert used
     assert used <= commands
     assert {"check", "demo", "report", "app"} <= commands

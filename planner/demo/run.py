@@ -89,11 +89,9 @@ def run_demo(
     import os
 
     place = str(folder)
-    if say:
-        say(
-            f"Writing an invented project into {place}: nothing in it is real, no price and no room."
-        )
     written = [str(path) for path in write_project(folder)]
+    if say:
+        say(f"An invented project is in {place}: nothing in it is real, no price and no room.")
     steps = []
     for words in commands(place):
         command = shlex.join(["planner", *words])

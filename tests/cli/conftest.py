@@ -1,17 +1,9 @@
-"""A demo project that all command tests share; none of them changes it."""
-
-import contextlib
-import io
+"""The demo project under a short name."""
 
 import pytest
 
-from planner.cli import main
-
 
 @pytest.fixture(scope="session")
-def demo(tmp_path_factory):
+def demo(demo_project):
     """The invented project after its own loop."""
-    place = tmp_path_factory.mktemp("demo") / "net-loft"
-    with contextlib.redirect_stdout(io.StringIO()), contextlib.redirect_stderr(io.StringIO()):
-        assert main(["demo", str(place)]) == 0
-    return place
+    return demo_project
