@@ -195,17 +195,33 @@ def report(
     output: Annotated[
         Path, typer.Option("--output", "-o", metavar="F", help="PDF or HTML.")
     ] = Path("report.pdf"),
+    drawings: Annotated[
+        Path | None,
+        typer.Option("--drawings", metavar="F", help="Also the drawings alone: DXF, PDF, HTML."),
+    ] = None,
+    acceptance: Annotated[
+        Path | None,
+        typer.Option(
+            "--acceptance", metavar="F", help="Also the acceptance sheet alone, with --after."
+        ),
+    ] = None,
     paper: Annotated[str, typer.Option("--paper", help="a4, a3 or us-letter.")] = "a4",
     as_json: AsJson = False,
 ) -> None:
     """Put everything on paper: one page for the client, then every number with its source."""
-    from planner.handover import report_data
+    from planner.errors import InputError
+    from planner.handover import acceptance_sheet, report_data
     from planner.measure.measured import read_measured
     from planner.project import open_project
-    from planner.report.printing import write_document
+    from planner.report.printing import write_document, write_drawings
     from planner.report.report import report_document
 
     project = open_project(room)
+    if acceptance is not None and after is None:
+        raise InputError(
+            "an acceptance sheet needs a measurement of the treated room",
+            cure="Name it with --after after.csv.",
+        )
     files = [project.room_file, project.folder / "catalogue.csv", option, measured, after]
     files += compare_with or []
     data = report_data(
@@ -217,10 +233,30 @@ def report(
         files=[path for path in files if path is not None and path.is_file()],
         paper=paper,
     )
-    written = write_document(output, report_document(data))
-    if written.note:
-        warn(written.note)
+    papers = [write_document(output, report_document(data))]
+    if drawings is not None:
+        papers.append(
+            write_drawings(
+                drawings,
+                project.room,
+                data.panels,
+                paper=paper,
+                units=data.units,
+                timestamp=data.timestamp,
+            )
+        )
+    if acceptance is not None:
+        papers.append(write_document(acceptance, acceptance_sheet(data)))
+    for one in papers:
+        if one.note:
+            warn(one.note)
     if as_json:
-        print_json({"written": str(written.path)})
+        print_json(
+            {
+                "written": str(papers[0].path),
+                "also_written": [str(one.path) for one in papers[1:]],
+            }
+        )
     else:
-        say(f"Written: {written.path}")
+        for one in papers:
+            say(f"Written: {one.path}")

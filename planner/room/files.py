@@ -94,15 +94,20 @@ def parse_room(text: str, *, file: str | Path = "room.toml") -> Room:
     return room_from(data, file=file)
 
 
-def room_from(data: Mapping[str, Any], *, file: str | Path | None = None) -> Room:
-    """Room from nested tables as TOML gives them; bare lengths are in the table's `units`.
+def room_from(
+    data: Mapping[str, Any], *, file: str | Path | None = None, lengths_in: str | None = None
+) -> Room:
+    """Room from nested tables as TOML gives them.
+
+    Bare lengths are in the table's own `units`, or in `lengths_in` (``m`` or ``ft``) where that is
+    given: `Room.model_dump` gives metres whatever the room's unit.
 
     Raises
     ------
     RoomError
         As `read_room`.
     """
-    units = data.get("units", "m")
+    units = lengths_in or data.get("units", "m")
     context = {"units": units if units in ("m", "ft") else "m"}
     try:
         return Room.model_validate(dict(data), context=context)
