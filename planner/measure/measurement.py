@@ -121,6 +121,7 @@ def measure(
             notes,
             state=state or (states.pop() if len(states) == 1 else ""),
             mixed=len(states) > 1 and not state,
+            spoilt=_spoilt(results),
             air=air,
             date=datetime.date.today().isoformat() if date is None else date,
         ),
@@ -269,6 +270,16 @@ def _positions(results: Sequence[_Result]) -> dict[tuple[str, str], Decays]:
     return decays
 
 
+def _spoilt(results: Sequence[_Result]) -> dict[float, tuple[str, ...]]:
+    """Flags of the bands that a finding spoils, each once."""
+    found: dict[float, dict[str, None]] = {}
+    for result in results:
+        for finding in result.recording.findings if result.recording else ():
+            for hz in finding.bands_hz:
+                found.setdefault(hz, {})[finding.flag or finding.what] = None
+    return {hz: tuple(flags) for hz, flags in found.items()}
+
+
 def _levelled(bursts: Sequence[BandEnergies]) -> list[BandEnergies]:
     """Bursts of one file with the steady level of the file set to one, so that files can be joined.
 
@@ -301,6 +312,7 @@ def _measured(
     *,
     state: str,
     mixed: bool,
+    spoilt: Mapping[float, tuple[str, ...]],
     air: Air | None,
     date: str,
 ) -> Measured:
@@ -326,7 +338,10 @@ def _measured(
         range_db=room.range_db,
         positions=room.positions,
         decays=room.decays,
-        flags=room.flags,
+        flags=tuple(
+            (*flags, *spoilt.get(hz, ()))
+            for hz, flags in zip(widest.nominal, room.flags, strict=True)
+        ),
         state=state,
         air=air,
         date=date,

@@ -272,8 +272,8 @@ def _check(power: Array, burst: Burst, number: int) -> tuple[str, list[Finding]]
     grave = [
         finding
         for finding in (
-            tamper.drifting(inner, burst.start + 20),
             tamper.gated(tail, at),
+            tamper.drifting(inner, burst.start + 20),
             tamper.fading(power[burst.stop - 2 : burst.next_start], at - 2),
             tamper.floor_rising(tail, at),
         )

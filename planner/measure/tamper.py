@@ -42,6 +42,8 @@ class Finding:
     stop_s: float
     bands_hz: tuple[float, ...] = ()
     """Bands it spoils; empty: all of them."""
+    flag: str = ""
+    """A word or two for those bands."""
     fatal: bool = False
     """Nothing measured with it may be used."""
 
@@ -126,8 +128,7 @@ def gated(power: Array, start: int) -> Finding | None:
         return None
     falls = levels[:-2] - levels[2:]
     worst = int(np.argmax(falls))
-    after = levels[worst + 2 : worst + 12]
-    if falls[worst] > GATE_DROP_DB and len(after) > 4 and np.ptp(after) < 6.0 and worst > 2:
+    if falls[worst] > GATE_DROP_DB and worst > 2:  # before that the direct sound ends
         at = (start + worst) * FRAME_S
         return Finding(
             f"the level drops by {falls[worst]:.0f} dB at once in the decay: a gate cut it off",
@@ -142,8 +143,12 @@ def fading(power: Array, start: int) -> Finding | None:
     `power` runs from the switch-off to the next burst, per `FRAME_S`, shape ``(frame,)``.
     """
     levels = level(power)
-    first = levels[0] if len(levels) else 0.0
+    first = levels[:3].max() if len(levels) else 0.0
     fall = first - levels
+    begun = np.flatnonzero(fall > 3.0)
+    # The stretch given may begin a few frames before the fall does.
+    still = np.flatnonzero(fall[: begun[0]] < 1.0) if len(begun) else begun
+    fall = fall[int(still[-1]) if len(still) else 0 :]
     marks = []
     for depth in (3.0, 10.0, 20.0):
         beyond = np.flatnonzero(fall > depth)
@@ -181,6 +186,7 @@ def thin_bands(steady: BandEnergies) -> Finding | None:
         steady.begin_s,
         steady.begin_s + len(steady.energy) * steady.frame_s,
         bands_hz=missing,
+        flag="hardly any sound in this band",
     )
 
 
@@ -224,5 +230,6 @@ def humming(samples: Array, rate: float, start_s: float) -> Finding | None:
                 start_s,
                 start_s + len(samples) / rate,
                 bands_hz=bands,
+                flag="mains hum",
             )
     return None
