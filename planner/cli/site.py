@@ -12,8 +12,10 @@ from planner.cli.output import number, print_json, say, seconds, table, warn, wa
 
 if TYPE_CHECKING:
     from planner.measure.measured import Measured
+    from planner.measure.measurement import Measurement
     from planner.reconcile.compare import Comparison
     from planner.reconcile.proof import Proof
+    from planner.room.model import Room
 
 
 def register(app: typer.Typer) -> None:
@@ -103,28 +105,32 @@ def measure(
     as_json: AsJson = False,
 ) -> None:
     """Find reverberation times in recordings of interrupted noise, or of impulses."""
+    from dataclasses import replace
+
     from planner.errors import InputError
     from planner.measure.measured import STATES, write_measured
     from planner.measure.measurement import measure as measure_files
 
     if state not in STATES:
         raise InputError(f"--state {state!r} is no state", cure="Use empty, furnished or occupied.")
-    air = None
+    described = None
     if room is not None:
         from planner.room.files import read_room
 
-        air = read_room(room).air_state()
+        described = read_room(room)
     result = measure_files(
         files,
         impulse=impulse,
         thirds=thirds,
         survey=survey,
         forward=forward,
-        air=air,
+        air=None if described is None else described.air_state(),
         state=state,
         progress=None if as_json else _progress,
     )
     measured = result.measured
+    if described is not None:
+        measured = replace(measured, warnings=(*measured.warnings, *_distances(described, result)))
     written = write_measured(output, measured) if output is not None else None
     if as_json:
         print_json({**measured.to_json(), "written": None if written is None else str(written)})
@@ -132,6 +138,25 @@ def measure(
     show_measured(measured)
     if written is not None:
         say(f"Written: {written}")
+
+
+def _distances(room: Room, result: Measurement) -> list[str]:
+    """Doubts about where source and microphones stood, where the room file says it."""
+    import numpy as np
+
+    from planner.measure.survey import distance_doubts
+    from planner.room.geometry import geometry
+
+    if not (room.positions.sources or room.positions.microphones):
+        return []
+    known = result.measured.t_s[np.isfinite(result.measured.t_s)]
+    return distance_doubts(
+        room.positions.sources,
+        room.positions.microphones,
+        [place.pair for place in result.places],
+        volume=geometry(room).volume,
+        reverberation_time=float(np.median(known)) if len(known) else 0.5,
+    )
 
 
 def _progress(done: int, total: int) -> None:

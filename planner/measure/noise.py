@@ -285,3 +285,41 @@ def _positions(volume: float | None, expected_s: Array | None) -> list[str]:
             "(2 sqrt(V/(c T)), ISO 3382-1)."
         )
     return [*lines, ""]
+
+
+def pink_balance(samples: Array, rate_hz: float, *, fraction: int = 1) -> tuple[Array, Array]:
+    """How far a recording or a loudspeaker is from pink: level per band against that of 1 kHz.
+
+    Parameters
+    ----------
+    samples
+        Steady noise of a second or more, shape ``(sample,)``.
+    rate_hz
+        [Hz]
+    fraction
+        1 for octaves, 3 for one-third octaves.
+
+    Returns
+    -------
+    bands_hz, level_db
+        Nominal midbands that the rate carries [Hz], and their level less that of the 1 kHz band;
+        0 everywhere for pink noise. [dB]
+
+    Raises
+    ------
+    InputError
+        The samples are too short or silent.
+    """
+    from planner.measure.filterbank import OCTAVE_BANDS, THIRD_BANDS, band_energies
+
+    if len(samples) < rate_hz or not np.any(samples):
+        raise InputError(
+            "a second of steady noise is needed to judge its balance",
+            cure="Record the noise while it is playing.",
+        )
+    bands = (THIRD_BANDS if fraction == 3 else OCTAVE_BANDS).offered(rate_hz)
+    frames = band_energies(np.asarray(samples), rate_hz, bands, frame_s=0.1).energy
+    # The first and last frame hold the filters' own start and end.
+    power = frames[1:-1].mean(axis=0)
+    level = 10.0 * np.log10(np.maximum(power, 1e-20))
+    return np.array(bands.nominal), level - level[bands.nominal.index(1000.0)]

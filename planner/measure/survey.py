@@ -184,13 +184,14 @@ def average(positions: Mapping[tuple[str, str], Decays]) -> Average:
     good = np.isfinite(table["t_s"])
     count = good.sum(axis=0)
     decays_of = np.array([one.count for one in each])
+    worth = np.array([float(_worth(one)) for one in each])
     t_s = _mean(table["t_s"], good)
     evaluation = tuple(_most_used(each, n) for n in range(len(bands)))
     expected = np.array(
         [
             float(
                 iso_uncertainty(
-                    t_s[n], bands.width[n], count[n], np.mean(decays_of[good[:, n]]), evaluation[n]
+                    t_s[n], bands.width[n], count[n], np.mean(worth[good[:, n]]), evaluation[n]
                 )
             )
             if count[n]
@@ -221,6 +222,75 @@ def average(positions: Mapping[tuple[str, str], Decays]) -> Average:
         decays=tuple(int(decays_of[good[:, n]].sum()) for n in range(len(bands))),
         flags=tuple(_flags(each, n) for n in range(len(bands))),
     )
+
+
+IMPULSE_WORTH = 10
+"""Decays of interrupted noise that one backward-integrated impulse response counts as
+(ISO 3382-2:2008, annex A, from memory)."""
+
+
+def _worth(one: Decays) -> int:
+    """Decays behind a position, an impulse counted as ten."""
+    from_noise = any(np.isfinite(band.whole_s) for band in one.each)
+    return one.count if from_noise else IMPULSE_WORTH * one.count
+
+
+def distance_doubts(
+    sources: Mapping[str, Sequence[float]],
+    microphones: Mapping[str, Sequence[float]],
+    pairs: Sequence[tuple[str, str]],
+    *,
+    volume: float,
+    reverberation_time: float,
+    speed: float = 343.0,
+) -> list[str]:
+    """Positions of a survey that stand too close, in words.
+
+    Parameters
+    ----------
+    sources, microphones
+        Positions by name, as in the room file. [m]
+    pairs
+        Source and microphone position of each recording.
+    volume, reverberation_time, speed
+        For the least distance between them, 2 sqrt(V / (c T)) (ISO 3382-1). [m³], [s], [m/s]
+
+    Notes
+    -----
+    Microphones are to stand 2 m from each other (half a wavelength, ISO 3382-2, from memory). Small
+    rooms often cannot, so that only those closer than 1 m are said.
+    """
+    from itertools import combinations
+
+    from planner.measure.noise import smallest_distance
+
+    def apart(a: Sequence[float], b: Sequence[float]) -> float:
+        return float(np.linalg.norm(np.subtract(a, b)))
+
+    least = smallest_distance(volume, reverberation_time, speed)
+    doubts = [
+        f"Source {s} and microphone {m} stand {apart(sources[s], microphones[m]):.2f} m apart, "
+        f"{least:.2f} m are wanted (2 sqrt(V/(c T)), ISO 3382-1)."
+        for s, m in dict.fromkeys(pairs)
+        if s in sources and m in microphones and apart(sources[s], microphones[m]) < least
+    ]
+    used = [m for m in dict.fromkeys(m for _, m in pairs) if m in microphones]
+    doubts += [
+        f"Microphones {a} and {b} stand {apart(microphones[a], microphones[b]):.2f} m apart, 2 m are "
+        "wanted (ISO 3382-2, from memory): their decays are not independent in the bass."
+        for a, b in combinations(used, 2)
+        if apart(microphones[a], microphones[b]) < 1.0
+    ]
+    unknown = [
+        f"{what} {name} is not among the room file's positions."
+        for what, names, known in (
+            ("Source", dict.fromkeys(s for s, _ in pairs), sources),
+            ("Microphone", dict.fromkeys(m for _, m in pairs), microphones),
+        )
+        for name in names
+        if known and name not in known
+    ]
+    return doubts + unknown
 
 
 def _mean(values: Array, good: NDArray[np.bool_]) -> Array:

@@ -9,6 +9,7 @@ from planner.measure.noise import (
     cue_sheet,
     lengths_for,
     noise_signal,
+    pink_balance,
     pink_noise,
     smallest_distance,
     write_signal,
@@ -141,3 +142,13 @@ def test_the_cue_sheet_fits_the_room():
     burst, silence = lengths_for(3.0)
     assert burst >= 3.0
     assert silence >= 3.0
+
+
+def test_balance_of_pink_and_of_white_noise():
+    """Pink is flat; white rises by 3.01 dB per octave (common practice, no source)."""
+    bands, level = pink_balance(pink_noise(20 * RATE, RATE, np.random.default_rng(7)), RATE)
+    assert np.abs(level).max() < 0.6
+    bands, level = pink_balance(np.random.default_rng(8).standard_normal(20 * RATE), RATE)
+    assert level == pytest.approx(10 * np.log10(bands / 1000), abs=0.6)
+    with pytest.raises(InputError, match="a second of steady noise"):
+        pink_balance(np.zeros(RATE * 2), RATE)

@@ -4,7 +4,13 @@ import numpy as np
 import pytest
 
 from planner.errors import RecordingError
-from planner.measure.survey import grade, iso_uncertainty, place_by_name, read_survey
+from planner.measure.survey import (
+    distance_doubts,
+    grade,
+    iso_uncertainty,
+    place_by_name,
+    read_survey,
+)
 
 
 def write(path, text):
@@ -75,3 +81,16 @@ def test_the_uncertainty_formula_of_the_standard():
             np.array([0.3]), np.array([0.71 * hz]), np.array([6.0]), np.array([2.0]), "t20"
         )
         assert 100 * u[0] / 0.3 == pytest.approx(percent, abs=0.06)
+
+
+def test_positions_that_stand_too_close():
+    """d_min = 2 sqrt(60/(343 · 0.3)) = 1.53 m by hand (ISO 3382-1)."""
+    doubts = distance_doubts(
+        {"A": (1, 1, 1.5)}, {"1": (2, 1, 1.2), "2": (2.5, 1, 1.2), "3": (4, 3, 1.2)},
+        [("A", "1"), ("A", "2"), ("A", "3"), ("B", "3")], volume=60.0, reverberation_time=0.3,
+    )  # fmt: skip
+    text = " ".join(doubts)
+    assert "Source A and microphone 1 stand 1.04 m apart, 1.53 m are wanted" in text
+    assert "microphone 3 stand" not in text
+    assert "Microphones 1 and 2 stand 0.50 m apart" in text
+    assert "Source B is not among" in text
