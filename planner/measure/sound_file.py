@@ -61,7 +61,8 @@ class SoundFile:
                 "is empty", file=self.path, cure="Copy it from the recorder again."
             )
         try:
-            file = soundfile.SoundFile(self._stream)
+            # By name: through a Python file object every kilobyte would cost a call.
+            file = soundfile.SoundFile(str(self.path))
             block = file.channels * _bytes_per_sample(file.subtype)
         except (soundfile.SoundFileError, RuntimeError, TypeError, ValueError) as error:
             raise self._unreadable() from error
@@ -88,18 +89,19 @@ class SoundFile:
         """A WAV whose header does not agree with what lies in the file."""
         place = _data_chunk(self._stream)
         if place is None:
-            self._stream.seek(0)
-            return soundfile.SoundFile(self._stream) if file.closed else file
+            return file
         offset, promised = place
         there = size - offset
         if promised in (0, 0xFFFFFFFF) or file.frames * block + 1024 < min(promised, there):
+            layout = {"subtype": file.subtype, "channels": file.channels}
+            rate = file.samplerate
+            file.close()
             raw = soundfile.SoundFile(
                 _Window(self._stream, offset, size),
                 format="RAW",
-                subtype=file.subtype,
                 endian="LITTLE",
-                channels=file.channels,
-                samplerate=file.samplerate,
+                samplerate=rate,
+                **layout,
             )
             self.notes.append(
                 "The header does not say how long the recording is (the recorder died or is still "
@@ -167,29 +169,50 @@ class SoundFile:
             self._file.seek(min(first, self.frames))
             data: Frames = self._file.read(max(last - first, 0), dtype="float32", always_2d=True)
         except RuntimeError as error:
-            raise RecordingError(
-                f"cannot be read beyond {first / self.rate:.1f} s",
-                file=self.path,
-                cure="Copy it from the recorder again.",
-            ) from error
-        if not np.isfinite(data).all():
-            raise RecordingError(
-                "holds values that are no numbers (NaN or infinity)",
-                file=self.path,
-                where=f"{first / self.rate:.1f} s to {last / self.rate:.1f} s",
-                cure="Export it again as 24-bit PCM.",
-            )
+            raise self._breaks_off(first) from error
+        self._check_finite(data, first)
         return data
 
     def blocks(self, size: int = 2**17) -> Iterator[Frames]:
-        """The whole file in blocks of `size` samples, shape ``(sample, channel)`` each."""
+        """The whole file in blocks of `size` samples, shape ``(sample, channel)`` each.
+
+        A block is valid until the next one is asked for.
+
+        Raises
+        ------
+        RecordingError
+            As `read`.
+        """
         position = 0
-        while position < self.frames:
-            block = self.read(position, position + size)
+        memory = np.empty((size, self.channels), np.float32)
+        self.read(0, 0)
+        while True:
+            try:
+                block: Frames = self._file.read(size, dtype="float32", always_2d=True, out=memory)
+            except RuntimeError as error:
+                raise self._breaks_off(position) from error
             if not len(block):
-                break  # the header promised more than there is
+                break  # also where the header promised more than there is
+            self._check_finite(block, position)
             yield block
             position += len(block)
+
+    def _breaks_off(self, position: int) -> RecordingError:
+        return RecordingError(
+            f"cannot be read beyond {position / self.rate:.1f} s",
+            file=self.path,
+            cure="Copy it from the recorder again.",
+        )
+
+    def _check_finite(self, data: Frames, first: int) -> None:
+        # The extremes of a block are not finite as soon as one sample is not.
+        if len(data) and not (np.isfinite(data.max()) and np.isfinite(data.min())):
+            raise RecordingError(
+                "holds values that are no numbers (NaN or infinity)",
+                file=self.path,
+                where=f"{first / self.rate:.1f} s to {(first + len(data)) / self.rate:.1f} s",
+                cure="Export it again as 24-bit PCM.",
+            )
 
     def close(self) -> None:
         """Close the file."""
