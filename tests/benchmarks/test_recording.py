@@ -81,11 +81,13 @@ def test_memory_does_not_grow_with_length(hour):
     """Peak resident memory above the import baseline, in a process of its own."""
     path, _ = hour
     code = (
-        "import resource, sys, scipy.fft, scipy.signal, soundfile, numpy\n"
+        "import sys, scipy.fft, scipy.signal, soundfile, numpy\n"
         "from planner.measure.recording import read_recording\n"
-        "import psutil; base = psutil.Process().memory_info().rss / 1024\n"
+        "def kib(name):\n"
+        "    return int(next(l for l in open('/proc/self/status') if l.startswith(name)).split()[1])\n"
+        "base = kib('VmRSS')\n"
         "read_recording(sys.argv[1])\n"
-        "print((resource.getrusage(resource.RUSAGE_SELF).ru_maxrss - base) / 1024)\n"
+        "print((kib('VmHWM') - base) / 1024)\n"
     )
     done = subprocess.run(
         [sys.executable, "-c", code, str(path)], capture_output=True, text=True, check=True
