@@ -1,0 +1,117 @@
+"""The app: which project is open, which pages there are, and what stands above every page."""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+
+import streamlit as st
+
+from planner.app.launch import FOLDER_VARIABLE
+from planner.app.work import Work, drafts, new_draft, new_work, open_work
+from planner.errors import PlannerError
+
+KEY = "work"
+"""Under this key the session keeps its one project."""
+
+QUERY = "project"
+"""Part of the address that names the folder, so that a reload finds it again."""
+
+PAGES = (
+    ("room.py", "Room", ":material/square_foot:"),
+    ("prediction.py", "Prediction", ":material/show_chart:"),
+    ("recordings.py", "Recordings", ":material/mic:"),
+    ("reality.py", "Reality", ":material/compare_arrows:"),
+    ("treatment.py", "Treatment", ":material/grid_view:"),
+    ("shopping.py", "Shopping list", ":material/shopping_cart:"),
+    ("projects.py", "Projects", ":material/folder_open:"),
+)
+
+
+def main() -> None:
+    """One run of the app."""
+    st.set_page_config(page_title="Room treatment planner", layout="wide")
+    folder = Path(__file__).parent / "pages"
+    pages = [
+        st.Page(
+            folder / name,
+            title=title,
+            icon=icon,
+            default=number == 0,
+            url_path=title.lower().replace(" ", "-"),
+        )
+        for number, (name, title, icon) in enumerate(PAGES)
+    ]
+    page = st.navigation(pages, position="top")
+    work = current()
+    st.query_params[QUERY] = str(work.folder)
+    _header(work)
+    page.run()
+
+
+def current() -> Work:
+    """The project of this session; the first run opens one."""
+    if KEY not in st.session_state:
+        work, notes = _first()
+        st.session_state[KEY] = work
+        st.session_state["notes"] = notes
+    found: Work = st.session_state[KEY]
+    return found
+
+
+def show_work(work: Work, notes: list[str] | None = None) -> None:
+    """Put another project in place of the open one."""
+    st.session_state[KEY] = work
+    st.session_state["notes"] = notes or []
+    st.query_params[QUERY] = str(work.folder)
+
+
+def next_serial() -> int:
+    """A number that no project of this session has had."""
+    st.session_state["serial"] = int(st.session_state.get("serial", 0)) + 1
+    return int(st.session_state["serial"])
+
+
+def _first() -> tuple[Work, list[str]]:
+    """The folder named by the address or the command, or a new sketch."""
+    named = st.query_params.get(QUERY) or os.environ.get(FOLDER_VARIABLE)
+    if named:
+        folder = Path(named)
+        try:
+            if (folder / "room.toml").is_file():
+                return open_work(folder, next_serial())
+            if folder.is_dir() and not any(folder.iterdir()):
+                return new_work(folder, next_serial()), []
+            note = f"{folder.name} holds no room.toml: a new sketch was begun instead."
+        except PlannerError as error:
+            note = f"{error} A new sketch was begun instead."
+        return new_work(new_draft(), next_serial()), [note]
+    return new_work(new_draft(), next_serial()), []
+
+
+def _header(work: Work) -> None:
+    """Name of the project, where it is kept, and anything that needs a decision."""
+    where = "a draft" if work.folder.parent == drafts() else f"kept in {work.folder.name}"
+    st.caption(f"**{_plain(work.room.name)}** · {where}; every change is saved at once")
+    for note in st.session_state.get("notes", []):
+        st.warning(_plain(note))
+    if work.conflict:
+        st.error(
+            f"{work.conflict} was changed by someone else meanwhile. Nothing was overwritten: which "
+            "one is to stay?"
+        )
+        left, right, _ = st.columns([1, 1, 3])
+        if left.button("Take theirs", key="take-theirs"):
+            opened, notes = open_work(work.folder, next_serial())
+            show_work(opened, notes)
+            st.rerun()
+        if right.button("Keep mine", key="keep-mine"):
+            work.overwrite()
+            st.rerun()
+
+
+def _plain(text: str) -> str:
+    """Text without meaning for Markdown."""
+    for sign in "\\`*_{}[]<>#$|~:":
+        text = text.replace(sign, f"\\{sign}")
+    return text

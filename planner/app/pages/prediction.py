@@ -1,0 +1,99 @@
+"""Prediction: reverberation time by every formula, modes, and what they rest on."""
+
+from __future__ import annotations
+
+import streamlit as st
+
+from planner.app import cached, show
+from planner.app.main import current
+from planner.bands import OCTAVES, band_label
+from planner.report import charts
+
+work = current()
+st.title("Prediction")
+prediction = cached.prediction(work)
+if work.use_measured:
+    st.info("The room as its measurement corrects it.")
+
+st.header("Reverberation time")
+for line in prediction.verdicts:
+    st.markdown(show.plain(line))
+left, right = st.columns(2, gap="large")
+with left:
+    show.chart(
+        charts.reverberation(
+            [
+                show.prediction_series(
+                    prediction,
+                    "Eyring" if prediction.formula == "eyring" else "Sabine",
+                    "untreated",
+                )
+            ],
+            prediction.target,
+            title="Against the target",
+        ),
+        key="prediction-target",
+    )
+with right:
+    spread = charts.formula_range(
+        prediction.methods, prediction.formula, assumed_hz=prediction.assumed_hz
+    )
+    show.chart(
+        charts.reverberation([spread], prediction.target, title="Between the formulas"),
+        key="prediction-range",
+        table=False,
+    )
+    import pandas as pd
+
+    with st.expander("Numbers: every formula"):
+        st.dataframe(
+            pd.DataFrame(
+                {
+                    name.replace("_", " "): [f"{t:.2f}" for t in times]
+                    for name, times in prediction.methods.items()
+                },
+                index=[band_label(hz) for hz in OCTAVES],
+            ).T,
+            width="stretch",
+        )
+        st.caption("Reverberation time per octave band (s).")
+if prediction.target is not None:
+    st.caption(
+        show.plain(f"Target: {prediction.target.description} ({prediction.target.citation}).")
+    )
+
+with st.expander("What the interval comes from"):
+    rows = {
+        name: [f"{100 * value:.0f}" for value in share]
+        for name, share in prediction.contributions.items()
+    }
+    shares = pd.DataFrame.from_dict(
+        rows, orient="index", columns=[band_label(hz) for hz in OCTAVES]
+    )
+    st.dataframe(shares, width="stretch")
+    st.caption("Share of each uncertain input in the variance, per octave band (%).")
+show.notes(prediction.warnings)
+
+st.header("Modes")
+highest = st.slider("Up to (Hz)", 60, 300, 150, 10, key=f"modes-{work.serial}")
+found = show.guarded(lambda: cached.modes(work, float(highest)))
+if found is not None:
+    show.chart(
+        charts.modes(
+            found.modes.hz, found.modes.kinds, found.modes.labels, schroeder_hz=found.schroeder_hz
+        ),
+        key="modes",
+    )
+    left, right = st.columns(2, gap="large")
+    with left:
+        show.chart(charts.mode_count(found.bands_hz, found.count), key="mode-count")
+    with right:
+        st.markdown("**Proportions, by published criteria**")
+        for one in found.criteria:
+            st.markdown(
+                f"{'✓' if one.holds else '✗'} {show.plain(one.name)}: {show.plain(one.numbers)}"
+            )
+            st.caption(show.plain(one.source))
+        if found.rating is not None:
+            st.markdown(show.plain(f"This room: {found.rating.reason}."))
+    show.notes(found.warnings, "About the modes")

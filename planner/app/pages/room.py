@@ -1,0 +1,335 @@
+"""Room: describe it, see it to scale, and see at once what it will sound like."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import streamlit as st
+
+from planner.absorption.library import builtin
+from planner.app import cached, show
+from planner.app.main import current
+from planner.app.work import Work
+from planner.predict.targets import USES
+from planner.report import charts
+from planner.report.drawings import on_screen
+
+work = current()
+units = work.room.units
+data = work.room.model_dump(by_alias=True)
+
+
+def key(name: str) -> str:
+    """Key of a field of this project."""
+    return f"room-{work.serial}-{units}-{name}"
+
+
+def materials(per_item: bool = False) -> dict[str, str]:
+    """Ids of what may be chosen, with their descriptions."""
+    library = {**builtin(), **{own.id: None for own in work.room.materials}}
+    return {
+        name: material.description if material else "own material of this room"
+        for name, material in library.items()
+        if material is None or material.per_item is per_item
+    }
+
+
+def choose(label: str, value: str, options: dict[str, str], name: str) -> str:
+    """A choice among materials, by their plain words."""
+    ids = list(options) if value in options else [value, *options]
+    chosen = st.selectbox(
+        label,
+        ids,
+        index=ids.index(value),
+        format_func=lambda one: f"{options.get(one, one)}  ({one})",
+        key=key(name),
+    )
+    return str(chosen)
+
+
+def sizes(data: dict[str, Any]) -> None:
+    """Name, unit, dimensions or corners."""
+    data["name"] = (
+        st.text_input("Name", value=work.room.name, key=key("name")).strip() or work.room.name
+    )
+    left, right = st.columns(2)
+    data["units"] = left.radio(
+        "Lengths in", ["m", "ft"], index=["m", "ft"].index(units), horizontal=True, key=key("units"),
+        format_func={"m": "metres", "ft": "feet"}.get,
+    )  # fmt: skip
+    kind = right.radio(
+        "Plan", ["rectangle", "corners"], index=0 if work.room.is_rectangle else 1, horizontal=True,
+        key=key("plan"), format_func={"rectangle": "rectangle", "corners": "any corners"}.get,
+    )  # fmt: skip
+    length, width, height = work.room.dimensions
+    if kind == "rectangle":
+        one, two, three = st.columns(3)
+        with one:
+            length = show.length("Length", length, units, key=key("length")) or length
+        with two:
+            width = show.length("Width", width, units, key=key("width")) or width
+        with three:
+            height = show.length("Height", height, units, key=key("height")) or height
+        data["shape"] = {**data["shape"], "length": length, "width": width, "footprint": None}
+    else:
+        height = show.length("Height", height, units, key=key("height")) or height
+        data["shape"] = {**data["shape"], "length": None, "width": None, "footprint": corners()}
+    data["shape"]["height"] = height
+    if kind == "rectangle" and isinstance(data["surfaces"]["walls"], list | tuple):
+        data["surfaces"]["walls"] = data["surfaces"]["walls"][0]
+    if kind == "corners" and isinstance(data["surfaces"]["walls"], dict):
+        data["surfaces"]["walls"] = next(iter(data["surfaces"]["walls"].values()))
+
+
+def corners() -> list[tuple[float, float]]:
+    """Corners in plan, as a table of x and y."""
+    import pandas as pd
+
+    from planner.room.lengths import METRES_PER
+
+    base = pd.DataFrame(work.room.footprint / METRES_PER[units], columns=["x", "y"]).round(4)
+    st.caption("Corners in plan, anticlockwise; x from front to back, y from left to right.")
+    edited = st.data_editor(
+        base, num_rows="dynamic", width="stretch", key=key("corners"),
+        column_config={c: st.column_config.NumberColumn(f"{c} ({units})", format="%.3f") for c in "xy"},
+    )  # fmt: skip
+    rows = edited.dropna().to_numpy(dtype=float, copy=True) * METRES_PER[units]
+    return [(float(x), float(y)) for x, y in rows]
+
+
+def surfaces(data: dict[str, Any]) -> None:
+    """Material of floor, ceiling and walls."""
+    options = materials()
+    chosen = work.room.surface_materials
+    found: dict[str, Any] = {
+        name: choose(name.capitalize(), chosen[name], options, f"m-{name}")
+        for name in ("floor", "ceiling")
+    }
+    walls = work.room.wall_names
+    same = len({chosen[name] for name in walls}) == 1
+    if st.checkbox("All walls alike", value=same, key=key("alike")):
+        found["walls"] = choose("Walls", chosen[walls[0]], options, "m-walls")
+    else:
+        each = {name: choose(f"Wall {name}", chosen[name], options, f"m-{name}") for name in walls}
+        found["walls"] = each if work.room.is_rectangle else list(each.values())
+    data["surfaces"] = found
+    with st.expander("Their coefficients"):
+        rows = work.project.surfaces
+        st.dataframe(_coefficients(rows), hide_index=True, width="stretch")
+        st.caption("From tables; an asterisk marks what no source gives and the planner assumes.")
+
+
+def _coefficients(rows: Any) -> Any:
+    import pandas as pd
+
+    from planner.bands import OCTAVES, band_label
+
+    return pd.DataFrame(
+        [
+            {"part": part.name, "material": part.material, "area (m²)": round(float(area), 2)}
+            | {
+                band_label(hz): f"{a:.2f}{'*' if flag else ''}"
+                for hz, a, flag in zip(OCTAVES, alpha, assumed, strict=True)
+            }
+            for part, area, alpha, assumed in zip(
+                rows.parts, rows.area, rows.alpha, rows.assumed, strict=True
+            )
+        ]
+    )
+
+
+def things(data: dict[str, Any], name: str, title: str, blank: dict[str, Any]) -> None:
+    """A list of openings, patches, keep-outs or furnishings, each with its fields."""
+    entries = [dict(entry) for entry in data[name]]
+    for number, entry in enumerate(entries):
+        st.markdown(f"**{title} {number + 1}**")
+        fields(entry, f"{name}-{number}")
+        if st.button(f"Remove {title.lower()} {number + 1}", key=key(f"{name}-{number}-remove")):
+            entries.pop(number)
+            data[name] = entries
+            work.change_room(data)
+            work.serial += 1000
+            st.rerun()
+    if st.button(f"Add {title.lower()}", key=key(f"{name}-add-{len(entries)}")):
+        data[name] = [*entries, blank]
+        work.change_room(data)
+        st.rerun()
+    data[name] = entries
+
+
+LENGTHS = {"left": "From left", "bottom": "From floor", "width": "Width", "height": "Height"}
+
+
+def fields(entry: dict[str, Any], prefix: str) -> None:
+    """Fields of one entry of a list, by what it holds."""
+    names = list(work.room.surface_names)
+    columns = st.columns(2)
+    slot = 0
+    for field, value in list(entry.items()):
+        with columns[slot % 2]:
+            if field in ("wall", "on"):
+                entry[field] = st.selectbox(
+                    "On", names, index=names.index(value), key=key(f"{prefix}-{field}")
+                )
+            elif field == "kind":
+                kinds = ["door", "window", "hatch", "vent", "opening"]
+                entry[field] = st.selectbox(
+                    "Kind", kinds, index=kinds.index(value), key=key(f"{prefix}-kind")
+                )
+            elif field == "material":
+                entry[field] = choose("Material", value, materials(), f"{prefix}-material")
+            elif field == "item":
+                entry[field] = choose("What", value, materials(per_item=True), f"{prefix}-item")
+            elif field == "count":
+                entry[field] = int(
+                    st.number_input("How many", 1, 10_000, int(value), key=key(f"{prefix}-count"))
+                )
+            elif field in LENGTHS and value is not None:
+                entry[field] = show.length(
+                    LENGTHS[field], value, units, key=key(f"{prefix}-{field}")
+                )
+            elif field == "area" and value is not None:
+                entry[field] = float(
+                    st.number_input(
+                        "Area (m²)", 0.01, 1000.0, float(value), key=key(f"{prefix}-area")
+                    )
+                )
+            elif field == "why":
+                entry[field] = st.text_input("Why", value=value, key=key(f"{prefix}-why"))
+            else:
+                continue
+        slot += 1
+
+
+def places(data: dict[str, Any]) -> None:
+    """Seat and loudspeakers."""
+    length, width, _ = work.room.dimensions
+    positions = data["positions"]
+    use = st.checkbox(
+        "A seat and loudspeakers", value=positions["seat"] is not None, key=key("places")
+    )
+    if not use:
+        positions["seat"], positions["loudspeakers"] = None, []
+        return
+    positions["seat"] = point("Seat", positions["seat"] or (0.6 * length, width / 2, 1.2), "seat")
+    speakers = list(positions["loudspeakers"]) or [
+        (0.2 * length, 0.3 * width, 1.2), (0.2 * length, 0.7 * width, 1.2),
+    ]  # fmt: skip
+    positions["loudspeakers"] = [
+        point(f"Loudspeaker {n + 1}", place, f"speaker-{n}") for n, place in enumerate(speakers)
+    ]
+
+
+def point(label: str, value: tuple[float, float, float], name: str) -> tuple[float, float, float]:
+    """Three coordinates."""
+    st.markdown(f"**{label}**")
+    words = ("from the front", "from the left", "above the floor")
+    columns = st.columns(3)
+    found = []
+    for axis, (column, word) in enumerate(zip(columns, words, strict=True)):
+        with column:
+            got = show.length(f"{label} {word}", value[axis], units, key=key(f"{name}-{axis}"))
+            found.append(value[axis] if got is None else got)
+    return found[0], found[1], found[2]
+
+
+def target_and_air(data: dict[str, Any]) -> None:
+    """What the room is to reach, and its air."""
+    uses = {use.id: f"{use.description} – {use.source}" for use in USES}
+    now = work.room.target.use if work.room.target else None
+    ids = ["", *uses]
+    if work.room.target and now is None:
+        st.caption("The room file gives limits of its own; choose a use to replace them.")
+    chosen = st.selectbox(
+        "Target", ids, index=ids.index(now) if now in ids else 0, key=key("target"),
+        format_func=lambda one: uses.get(one, "none, or limits of one's own"),
+    )  # fmt: skip
+    if chosen:
+        keep = data["target"] if data["target"] and data["target"]["use"] == chosen else {}
+        data["target"] = {**keep, "use": chosen}
+    elif now is not None:
+        data["target"] = None
+    left, right = st.columns(2)
+    air = dict(data["air"])
+    air["temperature_c"] = float(
+        left.number_input(
+            "Temperature (°C)",
+            -20.0,
+            50.0,
+            float(air["temperature_c"]),
+            0.5,
+            key=key("temperature"),
+        )
+    )
+    air["humidity_percent"] = float(
+        right.number_input(
+            "Relative humidity (%)",
+            0.0,
+            100.0,
+            float(air["humidity_percent"]),
+            1.0,
+            key=key("humidity"),
+        )
+    )
+    data["air"] = air
+
+
+def describe(work: Work) -> None:
+    """All fields; takes the change at their end."""
+    with st.container(border=True):
+        sizes(data)
+    if work.problem is not None:
+        show.refusal(work.problem)
+        st.caption("The last description that holds is used until this is put right.")
+    with st.expander("Surfaces", expanded=True):
+        surfaces(data)
+    with st.expander(f"Doors and windows ({len(data['opening'])})"):
+        things(data, "opening", "Opening", {
+            "wall": work.room.wall_names[0], "kind": "door", "material": "door-solid-timber",
+            "left": 0.2, "bottom": 0.0, "width": 0.8, "height": 2.0,
+        })  # fmt: skip
+    with st.expander(f"What covers part of a surface ({len(data['patch'])})"):
+        things(
+            data, "patch", "Patch", {"on": "floor", "material": "carpet-on-underlay", "area": 2.0}
+        )
+    with st.expander(f"Furniture and people ({len(data['furnishing'])})"):
+        things(data, "furnishing", "Item", {"item": "person-seated", "count": 1})
+    with st.expander(f"Where nothing may be mounted ({len(data['keep_out'])})"):
+        things(data, "keep_out", "Keep-out", {
+            "on": work.room.wall_names[0], "left": 0.1, "bottom": 0.1, "width": 0.4, "height": 0.4, "why": "",
+        })  # fmt: skip
+    with st.expander("Seat and loudspeakers"):
+        places(data)
+    with st.expander("Target and air", expanded=True):
+        target_and_air(data)
+
+
+st.title("Room")
+form, view = st.columns([5, 6], gap="large")
+with form:
+    describe(work)
+work.change_room(data)
+if work.room.units != units:
+    st.rerun()  # the fields are to be shown in the other unit
+
+with view:
+    if work.problem is not None:
+        show.refusal(work.problem)
+    prediction = cached.prediction(work, calibrated=False)
+    series = [show.prediction_series(prediction, "predicted", "untreated")]
+    show.chart(
+        charts.reverberation(series, prediction.target, title="Predicted reverberation time"),
+        key="room-prediction",
+    )
+    geometry = work.project.geometry
+    st.caption(
+        f"Volume {geometry.volume:.1f} m³ · surface {geometry.surface_area:.1f} m² · Schroeder "
+        f"frequency {prediction.schroeder_hz:.0f} Hz"
+    )
+    names = ["plan", "ceiling", *work.room.wall_names]
+    which = st.segmented_control("View", names, default="plan", key=key("view")) or "plan"
+    show.drawing(
+        on_screen(work.room, which, (), units=work.room.units, theme=show.theme()),
+        f"{which} of {work.room.name}, to scale",
+    )
+    show.notes([*work.project.warnings, *prediction.warnings])

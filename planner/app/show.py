@@ -1,0 +1,128 @@
+"""What every page shows alike: charts with their numbers, drawings, refusals, lengths to type."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from typing import TYPE_CHECKING, Any
+
+import streamlit as st
+
+from planner.errors import PlannerError
+from planner.report.palette import DARK, LIGHT, Theme
+from planner.room.lengths import METRES_PER, parse_length
+
+if TYPE_CHECKING:
+    from planner.predict.prediction import Prediction
+    from planner.report.band_series import Series
+    from planner.report.chart import Chart
+
+
+def theme() -> Theme:
+    """Light or dark, as the page is."""
+    try:
+        kind = st.context.theme.type
+    except AttributeError:
+        kind = "light"
+    return DARK if kind == "dark" else LIGHT
+
+
+def plain(text: str) -> str:
+    """Text that a person typed, without meaning for Markdown."""
+    for sign in "\\`*_{}[]<>#$|~:":
+        text = text.replace(sign, f"\\{sign}")
+    return text
+
+
+def chart(picture: Chart, *, key: str, table: bool = True, height: int | None = None) -> None:
+    """A chart over the whole width, its message in words, and the same numbers as a table."""
+    spec = dict(
+        picture.sized("container", height or picture.spec.get("height", 260)).vega_lite(theme())
+    )
+    spec["autosize"] = {"type": "fit-x", "contains": "padding"}
+    st.vega_lite_chart(spec, width="stretch", theme=None, key=key)
+    st.caption(plain(picture.description))
+    if table:
+        with st.expander(f"Numbers: {plain(picture.title)}"):
+            st.dataframe(picture.table(), hide_index=True, width="stretch", key=f"{key}-table")
+
+
+def drawing(svg: str, words: str) -> None:
+    """A drawing to scale, with words for those who do not see it."""
+    labelled = svg.replace("<svg ", f'<svg role="img" aria-label="{_attribute(words)}" ', 1)
+    st.html(f'<div style="overflow-x:auto">{labelled}</div>')
+
+
+def _attribute(text: str) -> str:
+    for sign, entity in (("&", "&amp;"), ('"', "&quot;"), ("<", "&lt;"), (">", "&gt;")):
+        text = text.replace(sign, entity)
+    return text
+
+
+def refusal(error: PlannerError) -> None:
+    """A refusal in words."""
+    st.error(plain(str(error)))
+
+
+def notes(texts: Sequence[str], title: str = "Doubts and their cures") -> None:
+    """Doubts, out of the way but not hidden."""
+    if not texts:
+        return
+    with st.expander(f"{title} ({len(texts)})"):
+        for text in texts:
+            st.markdown(f"- {plain(text)}")
+
+
+def shown(metres: float | None, units: str) -> str:
+    """A length as one edits it: a number in the room's unit."""
+    return "" if metres is None else f"{metres / METRES_PER[units]:.4g}"
+
+
+def length(
+    label: str,
+    metres: float | None,
+    units: str,
+    *,
+    key: str,
+    optional: bool = False,
+    help_: str = "",
+) -> float | None:
+    """A field for a length; text that is none is refused below it and the old value stays. [m]."""
+    text = st.text_input(
+        f"{label} ({units})", value=shown(metres, units), key=key, help=help_ or _LENGTH_HELP
+    )
+    if optional and not text.strip():
+        return None
+    try:
+        found = parse_length(text, units)
+    except PlannerError as error:
+        refusal(error)
+        return metres
+    # Typed as shown: keep the exact value instead of the four digits of the field.
+    return metres if metres is not None and text == shown(metres, units) else found
+
+
+_LENGTH_HELP = "For example 5.20, 520 cm, 17' 1 or 17 ft 1."
+
+
+def prediction_series(prediction: Prediction, name: str, look: str) -> Series:
+    """A prediction as a line of a chart: its interval pale, assumed bands hollow."""
+    from planner.report.charts import Series
+
+    low, high = prediction.interval_s
+    return Series(
+        name=name,
+        values=prediction.time,
+        look=look,
+        low=low,
+        high=high,
+        assumed_hz=prediction.assumed_hz,
+    )
+
+
+def guarded(action: Callable[[], Any]) -> Any:
+    """The result of an action, or None after showing why it was refused."""
+    try:
+        return action()
+    except PlannerError as error:
+        refusal(error)
+        return None

@@ -1,0 +1,221 @@
+"""The project that is open in a browser session, and its folder: nothing here draws.
+
+Every change is written to the folder at once, unless someone else changed a file there meanwhile:
+then the page asks. A session without a folder of its own works in a draft folder, so that a
+reload loses nothing.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import os
+import re
+import tempfile
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+from planner.errors import InputError, OptionError, PlannerError, ProjectError, RoomError
+from planner.measure.measured import Measured, measured_to_csv, read_measured
+from planner.measure.measurement import Measurement
+from planner.project import Project
+from planner.room.files import read_room, room_from, room_to_toml
+from planner.room.model import Room
+from planner.storage import write_atomically
+from planner.treat.option import Option, option_to_toml, read_option
+from planner.treat.suggestion import Suggestion
+
+NEW_ROOM: dict[str, Any] = {
+    "name": "New room",
+    "shape": {"length": 5.0, "width": 4.0, "height": 2.6},
+    "surfaces": {
+        "floor": "timber-floor-on-joists",
+        "ceiling": "plasterboard-on-joists",
+        "walls": "plasterboard-on-studs",
+    },
+    "target": {"use": "listening-room-ebu3276"},
+    "treatment": {"keep_clear": ["floor"], "symmetric": [["left", "right"]]},
+}
+"""A first sketch, to be changed."""
+
+MOST_OPTIONS = 12
+
+
+@dataclass
+class Work:
+    """One open project."""
+
+    folder: Path
+    room: Room
+    options: dict[str, Option] = field(default_factory=dict)
+    chosen: str | None = None
+    """Name of the option that is looked at."""
+    measured: Measured | None = None
+    measurement: Measurement | None = None
+    """With the decay curves; only in the session that evaluated the recordings."""
+    use_measured: bool = False
+    """Calibrate the room by its measurement."""
+    suggestion: Suggestion | None = None
+    problem: PlannerError | None = None
+    """Why the last change to the room was not taken."""
+    conflict: str | None = None
+    """Name of a file that changed on the disk meanwhile."""
+    serial: int = 0
+    """Grows with every project that is opened: widgets of another project are not these."""
+    digests: dict[str, str] = field(default_factory=dict)
+
+    @property
+    def project(self) -> Project:
+        """The room with what lies beside it."""
+        return Project(self.room, self.folder, self.folder / "room.toml")
+
+    @property
+    def option(self) -> Option | None:
+        """The option that is looked at."""
+        return self.options.get(self.chosen) if self.chosen else None
+
+    @property
+    def calibrating(self) -> Measured | None:
+        """The measurement that corrects the room, where that is wanted."""
+        return self.measured if self.use_measured else None
+
+    def change_room(self, data: dict[str, Any]) -> bool:
+        """Take a changed description in metres; a refusal is kept in `problem`."""
+        try:
+            room = room_from(data, lengths_in="m")
+            Project(room, self.folder).surfaces  # noqa: B018 - refuses unknown materials
+        except PlannerError as error:
+            self.problem = error
+            return False
+        self.problem = None
+        if room != self.room:
+            self.room = room
+            self.suggestion = None
+            self.save("room.toml", room_to_toml(room))
+        return True
+
+    def set_option(self, option: Option, *, replacing: str | None = None) -> None:
+        """Keep an option under its name, in place of another where that is named."""
+        if (
+            replacing is None
+            and option.name not in self.options
+            and len(self.options) >= MOST_OPTIONS
+        ):
+            raise OptionError(f"{MOST_OPTIONS} options are kept already", cure="Delete one first.")
+        if replacing and replacing != option.name:
+            self.remove_option(replacing)
+        self.options[option.name] = option
+        self.chosen = option.name
+        self.save(f"options/{file_name(option.name)}.toml", option_to_toml(option))
+
+    def remove_option(self, name: str) -> None:
+        """Forget an option and delete its file."""
+        self.options.pop(name, None)
+        path = self.folder / "options" / f"{file_name(name)}.toml"
+        path.unlink(missing_ok=True)
+        self.digests.pop(f"options/{file_name(name)}.toml", None)
+        if self.chosen == name:
+            self.chosen = next(iter(self.options), None)
+
+    def set_measured(self, measurement: Measurement) -> None:
+        """Keep what the recordings gave."""
+        self.measurement, self.measured = measurement, measurement.measured
+        self.save("measured.csv", measured_to_csv(measurement.measured))
+
+    def save(self, name: str, text: str, *, force: bool = False) -> None:
+        """Write a file of the project, unless it changed on the disk since it was read."""
+        path = self.folder / name
+        known = self.digests.get(name)
+        if not force and path.is_file() and known is not None and _digest(path) != known:
+            self.conflict = name
+            return
+        write_atomically(path, text)
+        self.digests[name] = _digest(path)
+        if self.conflict == name:
+            self.conflict = None
+
+    def overwrite(self) -> None:
+        """Settle a conflict with what is in the browser."""
+        name, self.conflict = self.conflict, None
+        if name == "room.toml":
+            self.save(name, room_to_toml(self.room), force=True)
+        elif name == "measured.csv" and self.measured is not None:
+            self.save(name, measured_to_csv(self.measured), force=True)
+        elif name:
+            for option in self.options.values():
+                if f"options/{file_name(option.name)}.toml" == name:
+                    self.save(name, option_to_toml(option), force=True)
+
+
+def open_work(folder: Path, serial: int = 0) -> tuple[Work, list[str]]:
+    """Open a project folder; what cannot be read beside the room becomes a note.
+
+    Raises
+    ------
+    PlannerError
+        The room itself cannot be used.
+    """
+    room = read_room(folder)
+    work = Work(folder=folder, room=room, serial=serial)
+    notes: list[str] = []
+    try:
+        work.project.surfaces  # noqa: B018 - refuses unknown materials here, not on a page
+    except RoomError as error:
+        raise RoomError(
+            error.what, file=folder / "room.toml", where=error.where, cure=error.cure
+        ) from error
+    work.digests["room.toml"] = _digest(folder / "room.toml")
+    for path in sorted((folder / "options").glob("*.toml"))[:MOST_OPTIONS]:
+        try:
+            option = read_option(path)
+            work.options[option.name] = option
+            work.digests[f"options/{path.name}"] = _digest(path)
+        except InputError as error:
+            notes.append(str(error))
+    work.chosen = next(iter(work.options), None)
+    if (folder / "measured.csv").is_file():
+        try:
+            work.measured = read_measured(folder / "measured.csv")
+            work.digests["measured.csv"] = _digest(folder / "measured.csv")
+        except InputError as error:
+            notes.append(str(error))
+    return work, notes
+
+
+def new_work(folder: Path, serial: int = 0) -> Work:
+    """A first sketch in a folder that holds no room yet.
+
+    Raises
+    ------
+    ProjectError
+        The folder holds a room already.
+    """
+    if (folder / "room.toml").exists():
+        raise ProjectError("holds a room already", file=folder, cure="Open it instead.")
+    room = room_from(NEW_ROOM)
+    work = Work(folder=folder, room=room, serial=serial)
+    work.save("room.toml", room_to_toml(room))
+    return work
+
+
+def drafts() -> Path:
+    """Where sketches without a folder of their own are kept, for this user only."""
+    user = str(os.getuid()) if hasattr(os, "getuid") else os.environ.get("USERNAME", "user")
+    folder = Path(tempfile.gettempdir()) / f"room-treatment-planner-{user}"
+    folder.mkdir(mode=0o700, parents=True, exist_ok=True)
+    return folder
+
+
+def new_draft() -> Path:
+    """A new empty folder among the drafts."""
+    return Path(tempfile.mkdtemp(prefix="sketch-", dir=drafts()))
+
+
+def file_name(name: str) -> str:
+    """A name as a harmless file name."""
+    plain = re.sub(r"[^\w\- ]+", "", name, flags=re.UNICODE).strip().replace(" ", "-").lower()
+    return plain[:60] or hashlib.sha256(name.encode()).hexdigest()[:12]
+
+
+def _digest(path: Path) -> str:
+    return hashlib.sha256(path.read_bytes()).hexdigest()

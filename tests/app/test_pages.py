@@ -1,0 +1,169 @@
+"""Every page: first start, one change, one refusal."""
+
+import shutil
+from pathlib import Path
+
+import pytest
+from streamlit.testing.v1 import AppTest
+
+ROOT = Path(__file__).resolve().parents[2]
+PAGES = ROOT / "planner" / "app" / "pages"
+
+pytestmark = pytest.mark.filterwarnings("ignore::DeprecationWarning", "ignore::ResourceWarning")
+
+
+@pytest.fixture
+def project(demo_project, tmp_path):
+    """A copy of the demo that a test may change."""
+    place = tmp_path / "net-loft"
+    shutil.copytree(demo_project, place)
+    return place
+
+
+@pytest.fixture
+def start(monkeypatch, project):
+    """The app on that project, at a page."""
+
+    def go(page="room.py"):
+        monkeypatch.setenv("PLANNER_FOLDER", str(project))
+        app = AppTest.from_file(str(ROOT / "streamlit_app.py"), default_timeout=60).run()
+        assert not app.exception
+        if page != "room.py":
+            app.switch_page(str(PAGES / page)).run()
+        assert not app.exception, app.exception
+        return app
+
+    return go
+
+
+@pytest.mark.parametrize("page", sorted(path.name for path in PAGES.glob("*.py")))
+def test_every_page_starts(start, page):
+    app = start(page)
+    assert app.title
+    assert not app.error
+
+
+def field(app, label):
+    return next(one for one in app.text_input if one.label == label)
+
+
+def test_a_changed_length_is_saved_and_predicted(start, project):
+    app = start()
+    field(app, "Length (m)").set_value("6.00").run()
+    assert not app.exception
+    assert "length = 6.0" in (project / "room.toml").read_text(encoding="utf-8")
+    assert any("60.8 m³" in caption.value for caption in app.caption)  # 6.00 · 3.90 · 2.60 by hand
+
+
+@pytest.mark.parametrize(
+    ("text", "words"), [("six", "not a length"), ("-3", "positive"), ("500", "cm")]
+)
+def test_a_length_that_cannot_be_is_refused_and_the_room_stays(start, project, text, words):
+    before = (project / "room.toml").read_text(encoding="utf-8")
+    app = start()
+    field(app, "Length (m)").set_value(text).run()
+    assert not app.exception
+    assert any(words in error.value for error in app.error)
+    assert (project / "room.toml").read_text(encoding="utf-8") == before
+
+
+def test_feet_and_inches(start, project):
+    app = start()
+    field(app, "Height (m)").set_value("8' 6 1/2\"").run()
+    assert not app.exception
+    assert "height = 2.6035" in (project / "room.toml").read_text(
+        encoding="utf-8"
+    )  # (8 + 6.5/12) · 0.3048 by hand
+
+
+def test_a_file_changed_meanwhile_is_not_overwritten(start, project):
+    app = start()
+    path = project / "room.toml"
+    path.write_text(path.read_text(encoding="utf-8").replace("2.60", "2.70"), encoding="utf-8")
+    field(app, "Length (m)").set_value("6.00").run()
+    app.run()
+    assert any("changed by someone else" in error.value for error in app.error)
+    assert "2.70" in path.read_text(encoding="utf-8")
+    next(b for b in app.button if b.label == "Keep mine").click().run()
+    assert "length = 6.0" in path.read_text(encoding="utf-8")
+
+
+def test_the_measurement_explains_itself_and_can_be_used(start):
+    app = start("reality.py")
+    assert any("plasterboard" in text.value for text in app.markdown)
+    app.toggle[0].set_value(True).run()
+    assert not app.exception
+    app.switch_page(str(PAGES / "prediction.py")).run()
+    assert any("measurement corrects" in info.value for info in app.info)
+
+
+def test_without_a_measurement_the_page_says_what_to_do(start, project):
+    (project / "measured.csv").unlink()
+    app = start("reality.py")
+    assert "Nothing is measured yet" in app.info[0].value
+
+
+def test_recordings_are_evaluated(start, project):
+    (project / "measured.csv").unlink()
+    app = start("recordings.py")
+    next(b for b in app.button if b.label == "Evaluate recordings").click().run(timeout=120)
+    assert not app.exception
+    assert (project / "measured.csv").is_file()
+    assert any("engineering method" in caption.value for caption in app.caption)
+
+
+def test_a_recording_that_is_none_is_refused_in_words(start, project):
+    for path in (project / "recordings").glob("*.flac"):
+        path.write_bytes(b"no sound at all")
+    app = start("recordings.py")
+    next(b for b in app.button if b.label == "Evaluate recordings").click().run(timeout=120)
+    assert not app.exception
+    assert any("no sound file" in error.value for error in app.error)
+
+
+def test_a_suggestion_becomes_an_option(start, project):
+    app = start("treatment.py")
+    next(b for b in app.button if b.label == "Suggest the cheapest treatment").click().run(
+        timeout=120
+    )
+    assert not app.exception
+    assert any("no list within these limits is cheaper" in one.value for one in app.success)
+    assert (project / "options" / "suggestion-1.toml").is_file()
+    app.switch_page(str(PAGES / "shopping.py")).run()
+    assert not app.exception
+    assert any("EUR" in metric.value for metric in app.metric)
+
+
+def test_options_are_copied_renamed_and_deleted(start, project):
+    app = start("treatment.py")
+    next(b for b in app.button if b.label == "Copy").click().run()
+    assert not app.exception
+    assert len(list((project / "options").glob("*.toml"))) == 2
+    next(b for b in app.button if b.label == "Delete").click().run()
+    assert not app.exception
+    assert len(list((project / "options").glob("*.toml"))) == 1
+
+
+def test_shopping_without_an_option_says_where_to_make_one(start, project):
+    shutil.rmtree(project / "options")
+    assert "page Treatment" in start("shopping.py").info[0].value
+
+
+def test_a_new_room_and_a_folder_that_is_none(start):
+    app = start("projects.py")
+    next(b for b in app.button if b.label == "New room").click().run()
+    assert not app.exception
+    app.switch_page(str(PAGES / "projects.py")).run()
+    next(t for t in app.text_input if t.label == "Folder on this computer").set_value(
+        "/nowhere"
+    ).run()
+    next(b for b in app.button if b.label == "Open folder").click().run()
+    assert any("holds no room.toml" in error.value for error in app.error)
+
+
+def test_a_start_without_a_folder_is_a_sketch(monkeypatch, tmp_path):
+    monkeypatch.delenv("PLANNER_FOLDER", raising=False)
+    monkeypatch.setattr("tempfile.tempdir", str(tmp_path))
+    app = AppTest.from_file(str(ROOT / "streamlit_app.py"), default_timeout=60).run()
+    assert not app.exception
+    assert any("a draft" in caption.value for caption in app.caption)

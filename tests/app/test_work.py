@@ -1,0 +1,123 @@
+"""The open project: autosave, conflicts, options, and how the server is started."""
+
+import shutil
+
+import pytest
+
+from planner.app.launch import flags, launch
+from planner.app.work import file_name, new_work, open_work
+from planner.errors import OptionError, ProjectError, RoomError
+
+
+@pytest.fixture
+def work(demo_project, tmp_path):
+    shutil.copytree(demo_project, tmp_path / "net-loft")
+    found, notes = open_work(tmp_path / "net-loft")
+    assert notes == []
+    return found
+
+
+def test_a_project_is_opened_with_everything(work):
+    assert work.room.name == "Control room in the old net loft"
+    assert work.measured is not None
+    assert list(work.options) == ["first"]
+
+
+def test_a_change_is_saved_at_once_and_a_refusal_keeps_the_room(work):
+    data = work.room.model_dump(by_alias=True)
+    data["shape"]["height"] = 2.8
+    assert work.change_room(data)
+    assert "height = 2.8" in (work.folder / "room.toml").read_text(encoding="utf-8")
+    data["shape"]["height"] = -1
+    assert not work.change_room(data)
+    assert isinstance(work.problem, RoomError)
+    assert work.room.height == 2.8
+
+
+def test_feet_are_shown_and_kept_as_feet(work):
+    data = work.room.model_dump(by_alias=True)
+    data["units"] = "ft"
+    assert work.change_room(data)
+    assert work.room.height == pytest.approx(2.6)
+    again, _ = open_work(work.folder)
+    assert again.room.units == "ft"
+    assert again.room.height == pytest.approx(2.6)
+
+
+def test_two_tabs_on_one_project(work):
+    """The second to save is asked; nothing is lost either way."""
+    other, _ = open_work(work.folder)
+    first = other.room.model_dump(by_alias=True)
+    first["name"] = "Theirs"
+    assert other.change_room(first)
+    mine = work.room.model_dump(by_alias=True)
+    mine["name"] = "Mine"
+    work.change_room(mine)
+    assert work.conflict == "room.toml"
+    assert open_work(work.folder)[0].room.name == "Theirs"
+    work.overwrite()
+    assert work.conflict is None
+    assert open_work(work.folder)[0].room.name == "Mine"
+
+
+def test_options_are_kept_renamed_and_deleted(work):
+    option = work.options["first"]
+    work.set_option(option.model_copy(update={"name": "Zweite Wahl / ../x"}))
+    files = {path.name for path in (work.folder / "options").iterdir()}
+    assert files == {"first.toml", "zweite-wahl--x.toml"}
+    work.set_option(option.model_copy(update={"name": "third"}), replacing="first")
+    assert "first" not in work.options
+    work.remove_option("third")
+    assert work.chosen == "Zweite Wahl / ../x"
+    for n in range(11):
+        work.set_option(option.model_copy(update={"name": f"n{n}"}))
+    with pytest.raises(OptionError, match="kept already"):
+        work.set_option(option.model_copy(update={"name": "one too many"}))
+
+
+def test_a_broken_option_is_a_note_and_a_broken_room_a_refusal(work):
+    (work.folder / "options" / "bad.toml").write_text("= nonsense")
+    _, notes = open_work(work.folder)
+    assert "bad.toml" in notes[0]
+    (work.folder / "room.toml").write_text("name = 3")
+    with pytest.raises(RoomError, match=r"room\.toml"):
+        open_work(work.folder)
+
+
+def test_a_new_sketch_does_not_replace_a_room(tmp_path):
+    made = new_work(tmp_path)
+    assert made.room.name == "New room"
+    with pytest.raises(ProjectError, match="holds a room already"):
+        new_work(tmp_path)
+
+
+@pytest.mark.parametrize("name", ["a b", "Ünïcode", "///", "x" * 300, "..", "=cmd()"])
+def test_names_become_harmless_file_names(name):
+    plain = file_name(name)
+    assert plain
+    assert len(plain) <= 60
+    assert not set(plain) & set("/\\.:*?")
+
+
+def test_the_server_listens_to_this_computer_only_and_tells_nobody():
+    settings = flags(8501, browser=False, lan=False)
+    assert settings["server.address"] == "127.0.0.1"
+    assert settings["browser.gatherUsageStats"] == "false"
+    assert settings["browser.serverAddress"] == "localhost"
+    assert settings["server.headless"] == "true"
+    assert flags(8501, browser=False, lan=True)["server.address"] == "0.0.0.0"
+
+
+def test_a_folder_that_is_none_is_refused(tmp_path):
+    with pytest.raises(ProjectError, match="is no folder"):
+        launch(tmp_path / "nowhere")
+
+
+def test_the_network_is_an_explicit_choice_with_a_warning(monkeypatch, capsys):
+    commands = []
+    monkeypatch.setattr("subprocess.call", lambda command, env: commands.append(command) or 0)
+    assert launch(None, lan=True, browser=False) == 0
+    assert "no password" in " ".join(capsys.readouterr().err.split())
+    assert "0.0.0.0" in commands[0]
+    assert launch(None, browser=False) == 0
+    assert "127.0.0.1" in commands[1]
