@@ -30,7 +30,12 @@ PAGES = (
 
 def main() -> None:
     """One run of the app."""
-    st.set_page_config(page_title="Room treatment planner", layout="wide")
+    st.set_page_config(
+        page_title="Room treatment planner",
+        # A file of our own: the icon of a page would be fetched from another host.
+        page_icon=str(Path(__file__).with_name("icon.png")),
+        layout="wide",
+    )
     folder = Path(__file__).parent / "pages"
     pages = [
         st.Page(
@@ -47,6 +52,7 @@ def main() -> None:
     st.query_params[QUERY] = str(work.folder)
     _header(work)
     page.run()
+    current().remember()
 
 
 def current() -> Work:

@@ -48,14 +48,7 @@ def chart(picture: Chart, *, key: str, table: bool = True, height: int | None = 
 
 def drawing(svg: str, words: str) -> None:
     """A drawing to scale, with words for those who do not see it."""
-    labelled = svg.replace("<svg ", f'<svg role="img" aria-label="{_attribute(words)}" ', 1)
-    st.html(f'<div style="overflow-x:auto">{labelled}</div>')
-
-
-def _attribute(text: str) -> str:
-    for sign, entity in (("&", "&amp;"), ('"', "&quot;"), ("<", "&lt;"), (">", "&gt;")):
-        text = text.replace(sign, entity)
-    return text
+    st.image(svg, width="stretch", caption=plain(words))
 
 
 def refusal(error: PlannerError) -> None:

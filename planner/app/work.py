@@ -11,9 +11,12 @@ import hashlib
 import os
 import re
 import tempfile
+import tomllib
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
+
+import tomli_w
 
 from planner.errors import InputError, OptionError, PlannerError, ProjectError, RoomError
 from planner.measure.measured import Measured, measured_to_csv, read_measured
@@ -40,6 +43,9 @@ NEW_ROOM: dict[str, Any] = {
 
 MOST_OPTIONS = 12
 
+LOOKED_AT = "looked-at.toml"
+"""What the pages show of a project, beside it; nothing that a result depends on without saying so."""
+
 
 @dataclass
 class Work:
@@ -63,6 +69,7 @@ class Work:
     serial: int = 0
     """Grows with every project that is opened: widgets of another project are not these."""
     digests: dict[str, str] = field(default_factory=dict)
+    remembered: str = ""
 
     @property
     def project(self) -> Project:
@@ -122,6 +129,13 @@ class Work:
         self.measurement, self.measured = measurement, measurement.measured
         self.save("measured.csv", measured_to_csv(measurement.measured))
 
+    def remember(self) -> None:
+        """Keep what is looked at, so that a reload shows the same."""
+        text = tomli_w.dumps({"use_measured": self.use_measured, "chosen": self.chosen or ""})
+        if text != self.remembered:
+            self.remembered = text
+            write_atomically(self.folder / LOOKED_AT, text)
+
     def save(self, name: str, text: str, *, force: bool = False) -> None:
         """Write a file of the project, unless it changed on the disk since it was read."""
         path = self.folder / name
@@ -179,7 +193,19 @@ def open_work(folder: Path, serial: int = 0) -> tuple[Work, list[str]]:
             work.digests["measured.csv"] = _digest(folder / "measured.csv")
         except InputError as error:
             notes.append(str(error))
+    _recall(work)
     return work, notes
+
+
+def _recall(work: Work) -> None:
+    """What was looked at when the project was last open; a damaged note is no harm."""
+    try:
+        known = tomllib.loads((work.folder / LOOKED_AT).read_text(encoding="utf-8"))
+    except (OSError, ValueError):
+        return
+    work.use_measured = bool(known.get("use_measured")) and work.measured is not None
+    if known.get("chosen") in work.options:
+        work.chosen = str(known["chosen"])
 
 
 def new_work(folder: Path, serial: int = 0) -> Work:

@@ -329,9 +329,6 @@ def _flags(each: Sequence[Decays], band: int) -> tuple[str, ...]:
         flags.insert(0, f"refused: {reason}")
     elif refused:
         flags.append(f"refused at {refused} of {len(each)} positions")
-    kinds = {one.each[band].used for one in each if one.each[band].used}
-    if len(kinds) > 1:
-        flags.append("different evaluations at different positions")
     return tuple(flags)
 
 

@@ -250,6 +250,11 @@ def _largest(shares: dict[str, Array]) -> list[str | None]:
     return [names[row] for row in table.argmax(axis=0)]
 
 
+def _excess(seconds: float) -> str:
+    """How far beyond a limit, in words that never say nought."""
+    return f"{seconds:.2f} s" if seconds >= 0.005 else "less than 0.01 s"
+
+
 def _verdicts(prediction: Prediction) -> list[str]:
     target = prediction.target
     if target is None:
@@ -260,7 +265,7 @@ def _verdicts(prediction: Prediction) -> list[str]:
         ("too short", prediction.time < target.low),
     ):
         parts = [
-            f"{hz} Hz by {abs(t - limit):.2f} s"
+            f"{hz} Hz by {_excess(abs(t - limit))}"
             for hz, t, limit, out, judged in zip(
                 OCTAVES,
                 prediction.time,

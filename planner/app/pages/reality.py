@@ -24,12 +24,12 @@ if comparison is None:
 
 prediction = cached.prediction(work, calibrated=False)
 measured = charts.Series(
-    "measured", comparison.measured, "measured",
+    "Measured", comparison.measured, "measured",
     low=comparison.measured - 2 * comparison.measured_u, high=comparison.measured + 2 * comparison.measured_u,
 )  # fmt: skip
 show.chart(
     charts.measured_against_predicted(
-        show.prediction_series(prediction, "predicted", "untreated"), measured, prediction.target
+        show.prediction_series(prediction, "Predicted", "untreated"), measured, prediction.target
     ),
     key="reality",
 )

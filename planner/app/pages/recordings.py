@@ -142,7 +142,7 @@ def results() -> None:
 
         times = octave_times(measured)
         series = charts.Series(
-            "measured",
+            "Measured",
             times.t_s,
             "measured",
             low=times.t_s - 2 * times.u_s,

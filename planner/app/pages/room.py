@@ -316,7 +316,7 @@ with view:
     if work.problem is not None:
         show.refusal(work.problem)
     prediction = cached.prediction(work, calibrated=False)
-    series = [show.prediction_series(prediction, "predicted", "untreated")]
+    series = [show.prediction_series(prediction, "Predicted", "untreated")]
     show.chart(
         charts.reverberation(series, prediction.target, title="Predicted reverberation time"),
         key="room-prediction",

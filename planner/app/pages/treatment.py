@@ -5,6 +5,7 @@ from __future__ import annotations
 from functools import partial
 from typing import Any
 
+import numpy as np
 import pandas as pd
 import streamlit as st
 
@@ -18,7 +19,6 @@ from planner.treat.option import Option, OptionItem
 
 work = current()
 room = work.room
-LOOKS = ("option-a", "option-b", "measured", "untreated")
 st.title("Treatment")
 st.caption(
     "For the room as its measurement corrects it."
@@ -250,7 +250,7 @@ def edit(option: Option) -> None:
     show.chart(
         charts.reverberation(
             [
-                show.prediction_series(cached.prediction(work), "untreated", "untreated"),
+                show.prediction_series(cached.prediction(work), "Untreated", "untreated"),
                 show.prediction_series(prediction, changed.name, "option-a"),
             ],
             prediction.target,
@@ -321,7 +321,7 @@ def manage() -> None:
     )
     option = work.option
     assert option is not None
-    one, two, three, four = st.columns([2, 1, 1, 1])
+    one, two, three, four = st.columns([2, 1, 1, 1], vertical_alignment="bottom")
     name = one.text_input("New name", value=option.name, key=f"rename-{option.name}")
     if two.button(
         "Rename",
@@ -385,19 +385,29 @@ def compare() -> None:
         hide_index=True,
         width="stretch",
     )
-    untreated = show.prediction_series(cached.prediction(work), "untreated", "untreated")
-    target = work.project.target
+    before = cached.prediction(work)
+    after = {row.name: cached.prediction(work, work.options[row.name]) for row in rows}
+    # Lines alone, on one common axis: intervals stand above, with each option.
+    highest = max(float(np.nanmax(one.time)) for one in (before, *after.values()))
     columns = st.columns(2)
-    for number, row in enumerate(rows):
-        prediction = cached.prediction(work, work.options[row.name])
+    for number, (name, prediction) in enumerate(after.items()):
         with columns[number % 2]:
             show.chart(
                 charts.reverberation(
-                    [untreated, show.prediction_series(prediction, row.name, "option-a")], target,
-                    title=row.name, highest=round(float(max(cached.prediction(work).time)) + 0.2, 1), notes=False,
+                    [
+                        charts.Series("Untreated", before.time, assumed_hz=before.assumed_hz),
+                        charts.Series(
+                            name, prediction.time, "option-a", assumed_hz=prediction.assumed_hz
+                        ),
+                    ],
+                    work.project.target,
+                    title=name,
+                    highest=float(np.ceil(5 * highest) / 5),
+                    notes=False,
                 ),
-                key=f"beside-{number}", table=False,
-            )  # fmt: skip
+                key=f"beside-{number}",
+                table=False,
+            )
 
 
 with st.expander("Limits"):
