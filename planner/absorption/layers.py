@@ -53,8 +53,8 @@ class Layer(Protocol):
 class Porous:
     """A porous layer."""
 
-    thickness: float
-    """[m]"""
+    thickness: float | Array
+    """[m]; of many choices at once in the shape ``(choice, 1, 1)``"""
     flow_resistivity: float
     """[Pa s/m²]"""
     model: str = "miki"
@@ -94,8 +94,8 @@ class Porous:
 class AirGap:
     """Air, undivided or divided by battens so that it reacts locally."""
 
-    thickness: float
-    """[m]"""
+    thickness: float | Array
+    """[m]; as that of `Porous`"""
     local: bool = False
 
     def before(self, behind: Complex | None, frequency: Array, angle: Array) -> Complex:
@@ -107,8 +107,8 @@ class AirGap:
 class Sheet:
     """A thin sheet: a mass that resists, in series with what is behind it."""
 
-    mass: float
-    """Moving mass. [kg/m²]"""
+    mass: Array | float
+    """Moving mass, shape ``(frequency,)`` or a number. [kg/m²]"""
     resistance: Array | float
     """[Pa s/m], shape ``(frequency,)`` or a number"""
 
@@ -180,8 +180,8 @@ def microperforated(thickness: float, hole: float, open_area: float, frequency: 
     Notes
     -----
     r = 32 η t k_r / (p d²) with k_r = √(1 + x²/32) + (√2/32) x d/t; m = ρ t k_m / p with
-    k_m = 1 + 1/√(1 + x²/2) + 0.85 d/t, x = d √(ω ρ/(4 η)). Constants of 1998, from memory; the
-    mass is taken at the lowest frequency given, it changes little.
+    k_m = 1 + 1/√(1 + x²/2) + 0.85 d/t, x = d √(ω ρ/(4 η)). Constants of 1998, from memory (an older
+    form of k_m has 9 + x²/2 under the root).
 
     References
     ----------
@@ -192,12 +192,12 @@ def microperforated(thickness: float, hole: float, open_area: float, frequency: 
     resisting = np.sqrt(1.0 + x**2 / 32.0) + np.sqrt(2.0) / 32.0 * x * hole / thickness
     resistance = 32.0 * VISCOSITY * thickness / (open_area * hole**2) * resisting
     moving = 1.0 + 1.0 / np.sqrt(1.0 + x**2 / 2.0) + 0.85 * hole / thickness
-    return Sheet(float(np.median(DENSITY * thickness * moving / open_area)), resistance)
+    return Sheet(DENSITY * thickness * moving / open_area, resistance)
 
 
 def _through(
     medium: Medium,
-    thickness: float,
+    thickness: float | Array,
     local: bool,
     behind: Complex | None,
     frequency: Array,

@@ -12,7 +12,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.absorption.tables import Row, read_table
+from planner.absorption.tables import Row, band_heading, read_table
 from planner.absorption.uncertainty import (
     ASSUMED_SHARE,
     filled,
@@ -89,11 +89,7 @@ def coefficients(material: Material) -> Coefficients:
     """
     given = np.array([np.nan if value is None else value for value in material.alpha], float)
     if np.isfinite(given).sum() < FEWEST_BANDS:
-        raise MaterialError(
-            f"only {np.isfinite(given).sum()} bands are given",
-            where=repr(material.id),
-            cure="A single number does not say what happens in a band: give octave values.",
-        )
+        raise _too_few(material.id, int(np.isfinite(given).sum()))
     alpha, assumed = filled(given)
     rule = item_uncertainty(alpha) if material.per_item else table_uncertainty(alpha)
     own = np.array([np.nan if value is None else value for value in material.u], float)
@@ -102,11 +98,15 @@ def coefficients(material: Material) -> Coefficients:
     return Coefficients(alpha=alpha, u=u, assumed=assumed)
 
 
+Bandwise = Mapping[int, float] | Mapping[str, float]
+"""Values by nominal octave midband: ``{125: 0.2}``, or as a file has its keys: ``{"125": 0.2}``."""
+
+
 def material_from_values(
     material_id: str,
-    alpha: Mapping[int, float],
+    alpha: Bandwise,
     *,
-    u: float | Mapping[int, float] | None = None,
+    u: float | Bandwise | None = None,
     description: str = "",
     source: str = "",
     category: str = "own",
@@ -123,34 +123,29 @@ def material_from_values(
     material_id
         Its name.
     alpha
-        By nominal octave midband [Hz]; per square metre [-] or per item [m²].
+        By nominal octave midband [Hz] (``125``, ``"125"``, ``"1k"``); per square metre [-] or per
+        item [m²].
     u
         Standard uncertainty, one for all bands or by band; None: by rule.
 
     Raises
     ------
     MaterialError
-        A value is negative, looks like percent, or there are too few.
+        A value is no number, negative or looks like percent, a band is no octave, or there are too
+        few.
     """
-    for hz, value in alpha.items():
+    values = _by_octave(alpha, repr(material_id))
+    for hz, value in values.items():
         _check_value(value, f"{material_id!r}, {hz} Hz", per_item)
-    if len(alpha) < FEWEST_BANDS:
-        raise MaterialError(
-            f"only {len(alpha)} bands are given",
-            where=repr(material_id),
-            cure="A single number does not say what happens in a band: give octave values.",
-        )
+    if len(values) < FEWEST_BANDS:
+        raise _too_few(material_id, len(values))
     if isinstance(u, Mapping):
-        uncertainty: tuple[float | None, ...] = tuple(u.get(hz) for hz in OCTAVES)
+        given = _by_octave(u, f"{material_id!r}, u")
+        uncertainty: tuple[float | None, ...] = tuple(given.get(hz) for hz in OCTAVES)
     else:
         uncertainty = (u,) * len(OCTAVES)
     for doubt in uncertainty:
-        if doubt is not None and not 0 <= doubt <= (100 if per_item else 1):
-            raise MaterialError(
-                f"an uncertainty of {doubt:g} cannot be",
-                where=f"{material_id!r}, u",
-                cure="Give the standard uncertainty in the coefficient's own unit, such as 0.05.",
-            )
+        _check_doubt(doubt, f"{material_id!r}, u", 100.0 if per_item else 1.0)
     return Material(
         id=material_id,
         description=description,
@@ -158,7 +153,7 @@ def material_from_values(
         mounting=mounting,
         thickness_mm=thickness_mm,
         gap_mm=gap_mm,
-        alpha=tuple(alpha.get(hz) for hz in OCTAVES),
+        alpha=tuple(values.get(hz) for hz in OCTAVES),
         u=uncertainty,
         source=source,
         place_in_source="",
@@ -167,10 +162,46 @@ def material_from_values(
     )
 
 
-def _check_value(value: float, where: str, per_item: bool) -> None:
-    if value < 0 or not np.isfinite(value):
+def _by_octave(values: Bandwise, where: str) -> dict[int, float]:
+    """Values by nominal midband, whatever way the band was written."""
+    found: dict[int, float] = {}
+    for key, value in values.items():
+        band = band_heading(str(key))
+        hz = int(band[1:]) if band[1:].isdigit() else 0
+        if hz not in OCTAVES:
+            known = ", ".join(map(str, OCTAVES))
+            raise MaterialError(f"{key!r} is no octave band", where=where, cure=f"Use {known} Hz.")
+        if hz in found:
+            raise MaterialError(f"{hz} Hz is given twice", where=where)
+        found[hz] = value
+    return found
+
+
+def _is_number(value: object) -> bool:
+    return isinstance(value, (int, float, np.integer, np.floating)) and not isinstance(value, bool)
+
+
+def _too_few(material_id: str, count: int) -> MaterialError:
+    return MaterialError(
+        f"only {count} bands are given",
+        where=repr(material_id),
+        cure="A single number does not say what happens in a band: give octave values.",
+    )
+
+
+def _check_doubt(doubt: float | None, where: str, most: float) -> None:
+    if doubt is not None and not (_is_number(doubt) and 0 <= doubt <= most):
         raise MaterialError(
-            f"an absorption coefficient of {value:g} cannot be",
+            f"an uncertainty of {doubt} cannot be",
+            where=where,
+            cure="Give the standard uncertainty in the coefficient's own unit, such as 0.05.",
+        )
+
+
+def _check_value(value: float, where: str, per_item: bool) -> None:
+    if not _is_number(value) or value < 0 or not np.isfinite(value):
+        raise MaterialError(
+            f"an absorption coefficient of {value} cannot be",
             where=where,
             cure="Write a number from 0 to about 1.3; leave the band out where nothing is known.",
         )
@@ -229,10 +260,10 @@ class Library(Mapping[str, Material]):
 
 
 def tables_folder() -> Path:
-    """Where the tables lie: beside the package in a checkout, inside it in a wheel."""
+    """Where the tables lie: inside the package in a wheel, beside it in a checkout."""
     package = Path(str(files("planner")))
-    checkout = package.parent / "materials"
-    return checkout if (checkout / "surfaces.csv").is_file() else package / "_materials"
+    shipped = package / "_materials"
+    return shipped if shipped.is_dir() else package.parent / "materials"
 
 
 @cache

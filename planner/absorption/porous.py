@@ -57,7 +57,7 @@ def delany_bazley(frequency: ArrayLike, flow_resistivity: float) -> Medium:
 
     Notes
     -----
-    Fitted for 0.01 < X < 1, X = ρ f / σ; outside it may even turn active: see `in_range`.
+    Fitted for 0.01 < X < 1, X = ρ f / σ; outside it may even turn active: see `fitted_range`.
 
     References
     ----------
@@ -124,13 +124,13 @@ def johnson_champoux_allard(
     return Medium(np.asarray(z, complex), np.asarray(k, complex))
 
 
-def in_range(model: str, frequency: ArrayLike, flow_resistivity: float) -> NDArray[np.bool_]:
-    """Where the fit behind a model holds, shape of `frequency`; always for five parameters."""
-    f = np.asarray(frequency, float)
-    if model == "delany-bazley":
-        x = DENSITY * f / flow_resistivity
-        return np.asarray((x > 0.01) & (x < 1.0))
-    if model == "miki":
-        # Passive and smooth below its fit; only above is it used beyond what was measured.
-        return np.asarray(f / flow_resistivity < 1.0)
-    return np.ones(f.shape, bool)
+def fitted_range(model: str, flow_resistivity: float) -> tuple[float, float]:
+    """Frequencies between which the fit behind a model holds. [Hz].
+
+    0.01 < ρ f/σ < 1 for Delany and Bazley, 0.01 < f/σ < 1 (SI) for Miki, whose curve stays passive and
+    smooth below; no limit for five parameters.
+    """
+    if model == "jca":
+        return 0.0, float("inf")
+    unit = flow_resistivity / (DENSITY if model == "delany-bazley" else 1.0)
+    return 0.01 * unit, unit

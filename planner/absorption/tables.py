@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import io
+import math
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
@@ -15,6 +16,7 @@ from planner.errors import InputError
 LARGEST_FILE = 5_000_000
 """A table beyond this is something else. [byte]"""
 
+_NUMBER = re.compile(r"[+-]?(\d+\.?\d*|\.\d+)(e[+-]?\d{1,2})?", re.IGNORECASE | re.ASCII)
 _BAND = re.compile(r"a?\s*([\d.,]+)\s*(k?)\s*(?:hz)?", re.IGNORECASE)
 
 
@@ -38,17 +40,21 @@ class Row:
         Raises
         ------
         ValueError
-            The cell holds something else.
+            The cell holds something else, or nothing finite.
         """
         cell = self.text(column)
         if not cell:
             return None
-        return float(cell.replace(",", ".") if self.decimal_comma else cell)
+        plain = cell.replace(",", ".") if self.decimal_comma else cell
+        if not _NUMBER.fullmatch(plain) or not math.isfinite(float(plain)):
+            raise ValueError(f"{cell[:40]!r} under {column!r} is not a number")
+        return float(plain)
 
 
 def decoded(raw: bytes) -> str:
-    """Text of a file saved as UTF-8, with or without a mark, or by an older spreadsheet."""
-    for encoding in ("utf-8-sig", "cp1252"):
+    """Text of a file saved as UTF-8 or UTF-16, with or without a mark, or by an older spreadsheet."""
+    marked = raw[:2] in (b"\xff\xfe", b"\xfe\xff")
+    for encoding in ("utf-16",) if marked else ("utf-8-sig", "cp1252"):
         try:
             return raw.decode(encoding)
         except UnicodeDecodeError:
@@ -61,22 +67,50 @@ def rows_of(text: str) -> list[Row]:
 
     The delimiter is the one of ``;``, tab and ``,`` that the heading line holds most of; with
     semicolons or tabs a comma inside a number is a decimal comma.
+
+    Raises
+    ------
+    csv.Error
+        A heading stands there twice, or a row has more cells than there are headings: everything
+        after a separator that should have been in quotation marks would sit in the wrong column.
     """
-    lines = text.splitlines()
-    start = next((n for n, line in enumerate(lines) if line.strip() and line[0] != "#"), None)
+    lines = text.replace("\r\n", "\n").replace("\r", "\n").split("\n")
+    start = next((n for n, line in enumerate(lines) if not _is_remark(line)), None)
     if start is None:
         return []
     delimiter = max(";\t,", key=lines[start].count)
     reader = csv.reader(io.StringIO("\n".join(lines[start:])), delimiter=delimiter)
-    headings = [band_heading(cell) for cell in next(reader)]
+    headings = _headings(next(reader))
     found = []
     for cells in reader:
         if not any(cell.strip() for cell in cells) or cells[0].lstrip().startswith("#"):
             continue
         stripped = [cell.strip() for cell in cells]
+        line = start + reader.line_num
+        if any(stripped[len(headings) :]):
+            raise csv.Error(
+                f"line {line} has {len(cells)} cells under {len(headings)} headings: "
+                "put text that holds the separator in quotation marks"
+            )
         row = dict(zip(headings, stripped, strict=False))
-        found.append(Row(row, start + reader.line_num, delimiter != ","))
+        found.append(Row(row, line, delimiter != ","))
     return found
+
+
+def _is_remark(line: str) -> bool:
+    """Empty, a comment (a spreadsheet may have put it in quotation marks), or the hint ``sep=;``."""
+    bare = line.strip().strip(";,\t").lstrip('"')
+    return not bare or bare.startswith("#") or bare.lower().startswith("sep=")
+
+
+def _headings(cells: Sequence[str]) -> list[str]:
+    names = [band_heading(cell) for cell in cells]
+    while names and not names[-1]:
+        names.pop()
+    twice = next((name for name in names if name and names.count(name) > 1), None)
+    if twice:
+        raise csv.Error(f"the column {twice!r} stands there twice")
+    return names
 
 
 def read_table(

@@ -1,7 +1,11 @@
 """The tables row by row, look-up, and what stands in for missing bands."""
 
 import csv
+import os
 import re
+import shutil
+import subprocess
+import sys
 from pathlib import Path
 
 import numpy as np
@@ -9,6 +13,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+import planner
 from planner.absorption.library import (
     TABLES,
     Library,
@@ -149,6 +154,14 @@ def test_unknown_materials_are_refused_with_the_nearest(wanted, hint):
         ({125: 18, 250: 12, 500: 10}, None, "looks like percent"),
         ({125: -0.1, 250: 0.1, 500: 0.1}, None, "cannot be"),
         ({125: float("nan"), 250: 0.1, 500: 0.1}, None, "cannot be"),
+        ({125: "0.1", 250: 0.1, 500: 0.1}, None, "cannot be"),
+        ({125: True, 250: 0.1, 500: 0.1}, None, "cannot be"),
+        ({126: 0.1, 250: 0.1, 500: 0.1}, None, "126 is no octave band"),
+        ({"bass": 0.1, 250: 0.1, 500: 0.1}, None, "'bass' is no octave band"),
+        ({125: 0.1, "125": 0.1, 500: 0.1}, None, "125 Hz is given twice"),
+        ({125: 0.1, 250: 0.1, 500: 0.1}, {160: 0.1}, "160 is no octave band"),
+        ({125: 0.1, 250: 0.1, 500: 0.1}, "wide", "uncertainty of wide"),
+        ({125: 0.1, 250: 0.1, 500: 0.1}, float("nan"), "uncertainty of nan"),
         ({500: 0.5}, None, "only 1 bands"),
         ({125: 0.1, 250: 0.1, 500: 0.1}, 5.0, "uncertainty of 5"),
     ],
@@ -167,6 +180,55 @@ def test_own_values_keep_their_uncertainty_and_may_exceed_one():
     assert library.find("own") is own
     assert len(library) == len(builtin()) + 1
     assert isinstance(library, Library)
+
+
+@pytest.mark.parametrize(
+    "keys", [(125, 250, 1000), ("125", "250", "1000"), ("125 Hz", "a250", "1k")]
+)
+def test_bands_may_be_written_as_files_write_them(keys):
+    own = material_from_values("own", dict(zip(keys, (0.1, 0.2, 0.3), strict=True)))
+    assert own.alpha == (None, 0.1, 0.2, None, 0.3, None, None, None)
+
+
+def test_no_row_names_a_maker():
+    """A trade name would be a capitalised word inside a description, or carry a mark; our words have neither."""
+    units = {"Pa", "Hz"}
+    for material in builtin().values():
+        words = re.findall(r"[^\W\d_]+", material.description)
+        assert all(word == word.lower() or word in units for word in words[1:]), material.id
+        text = f"{material.description} {material.note} {material.place_in_source}"
+        assert not re.search(r"[®™©]|\b(inc|ltd|gmbh|corp)\b", text.lower()), material.id
+
+
+def test_rows_that_books_misprint_are_not_used():
+    """Cells of Bies, table 6.2, that are a tenth of what three other books print, and Long's window (0.55 for
+    0.35 at 125 Hz): plaster on lath 0.14 and on block 0.12, painted block 0.10 as Everest and Long print them.
+    """
+    expected = {"plaster-smooth-on-lath": 0.14, "plaster-on-block": 0.12, "block-painted": 0.10, "window-ordinary": 0.35}  # fmt: skip
+    for name, printed in expected.items():
+        assert builtin()[name].alpha[1] == pytest.approx(printed)
+
+
+def test_an_installed_package_finds_the_tables_inside_itself(tmp_path):
+    """As a wheel lays them out: materials/ as planner/_materials, no checkout around."""
+    package = tmp_path / "planner"
+    shutil.copytree(Path(planner.__file__).parent / "absorption", package / "absorption")
+    for name in ("__init__", "bands", "errors"):
+        shutil.copy(Path(planner.__file__).parent / f"{name}.py", package)
+    shutil.copytree(tables_folder(), package / "_materials")
+    (tmp_path / "materials").mkdir()  # another project's folder of the same name beside it
+    script = (
+        "from planner.absorption import library as l; print(len(l.builtin()), l.tables_folder())"
+    )
+    found = subprocess.run(
+        [sys.executable, "-c", script],
+        cwd=tmp_path,
+        env={**os.environ, "PYTHONPATH": str(tmp_path), "PYTHONDONTWRITEBYTECODE": "1"},
+        capture_output=True,
+        text=True,
+        check=True,
+    )
+    assert found.stdout.split() == [str(len(builtin())), str(package / "_materials")]
 
 
 def test_sources_are_named_in_full():

@@ -6,7 +6,7 @@ from pathlib import Path
 
 import pytest
 
-from planner.absorption.ratings import nrc, practical, saa, weighted
+from planner.absorption.ratings import WEIGHTED_U, nrc, practical, saa, weighted
 
 REFERENCE = Path(__file__).parents[1] / "reference" / "weighted_absorption_examples.csv"
 
@@ -39,3 +39,17 @@ def test_nrc_and_saa_by_hand():
 
 def test_a_hard_surface_is_not_classified():
     assert weighted([0.02, 0.03, 0.03, 0.04, 0.05]).absorption_class == "not classified"
+
+
+def test_uncertainty_of_a_weighted_coefficient():
+    """ISO 12999-2:2020, table 5: the example states 0.70 ± 0.07 with coverage factor 2."""
+    expanded = 2 * WEIGHTED_U
+    assert expanded == pytest.approx(0.07)
+
+
+@pytest.mark.parametrize(
+    "alpha", [[0.5] * 4, [0.5] * 6, [0.5, float("nan"), 0.5, 0.5, 0.5], [-0.1] * 5]
+)
+def test_incomplete_bands_are_not_rated(alpha):
+    with pytest.raises(ValueError, match="a rating needs"):
+        weighted(alpha)
