@@ -62,6 +62,8 @@ def _layer(part: str, number: int) -> dict[str, Any]:
     words = part.split()
     if not words:
         raise MaterialError("has no name", where=where, cure=_EXAMPLE)
+    if not words[0].isalpha():
+        raise MaterialError(f"{words[0][:40]!r} is no list of layers", where=where, cure=_EXAMPLE)
     layer: dict[str, Any] = {"layer": words[0].lower()}
     for place, word in enumerate(words[1:]):
         key, sign, value = word.partition("=")

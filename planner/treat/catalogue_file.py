@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-import tomllib
 from collections.abc import Sequence
 from typing import Any, cast
 
@@ -17,7 +16,7 @@ from planner.absorption.library import (
     material_from_values,
 )
 from planner.bands import OCTAVES
-from planner.errors import CatalogueError, InputError
+from planner.errors import CatalogueError, InputError, MaterialError
 from planner.treat.catalogue import FREE, Product, Unit
 from planner.treat.cells import Row, decoded, number_of, rows_of
 from planner.treat.variants import filled_in, variants
@@ -245,33 +244,29 @@ def _values(row: Row, unit: Unit, material: Material | None) -> Coefficients:
 
 
 def _layers(row: Row) -> tuple[dict[str, Any], ...]:
-    cell = row.text("build_up", 2000)
+    from planner.absorption.build_up_text import layers_from_text
+
     try:
-        layers = tomllib.loads(f"build_up = {cell}")["build_up"]
-    except (tomllib.TOMLDecodeError, RecursionError, KeyError) as error:
-        raise row.wrong(
-            "build_up",
-            f"cannot be read: {error}",
-            "Write it as in a room file: [{ … }, { … }], from the front to the wall.",
-        ) from error
-    if not isinstance(layers, list) or not all(isinstance(layer, dict) for layer in layers):
-        raise row.wrong("build_up", "is no list of layers", "Write [{ … }, { … }].")
+        layers = layers_from_text(row.text("build_up", 2000))
+    except MaterialError as error:
+        raise _wrong_layers(row, error) from error
     return tuple(filled_in(row, layers))
+
+
+def _wrong_layers(row: Row, error: InputError) -> CatalogueError:
+    layer = (error.where or "").rpartition(", ")[2]
+    what = f"{layer} {error.what}" if layer.startswith("layer ") else error.what
+    return row.wrong("build_up", what, error.cure)
 
 
 def _from_layers(row: Row) -> Material:
     layers = _layers(row)
-    from planner.absorption.build_up import (  # type: ignore[import-not-found,unused-ignore]
-        material_from_build_up,
-    )
+    from planner.absorption.build_up import material_from_build_up
 
     try:
-        material: Material = material_from_build_up(
-            row.cells["id"], row.cells.get("description", ""), layers
-        )
-    except InputError as error:
-        raise row.wrong("build_up", error.what, error.cure) from error
-    return material
+        return material_from_build_up(row.cells["id"], row.cells.get("description", ""), layers)
+    except MaterialError as error:
+        raise _wrong_layers(row, error) from error
 
 
 def _alpha(row: Row, unit: Unit) -> dict[int, float]:

@@ -37,6 +37,7 @@ def test_a_cell_may_hold_the_short_line_or_the_list(text, layers):
         ("porous 50 =3", "no key=value"),
         ("[{layer=", "cannot be read"),
         ("[1, 2]", "no list of layers"),
+        ("5", "no list of layers"),
         ("[" * 5000, "cannot be read"),
     ],
 )

@@ -244,3 +244,29 @@ def test_no_mangled_catalogue_ends_in_a_traceback():
             refusals.append(str(error))
     assert len(refusals) > 1000
     assert all(text.startswith("c.csv") for text in refusals)
+
+
+def test_layers_may_stand_in_a_cell_as_a_short_line():
+    """The line and the list say the same: same coefficients, for every thickness and gap offered."""
+    line = "porous thickness flow_resistivity=9000 + air gap"
+    listed = (
+        "[{layer='porous', thickness_mm='thickness', flow_resistivity=9000}, "
+        "{layer='air', thickness_mm='gap'}]"
+    )
+    short, long = (
+        products_from_bytes(f'{VARIED}wool,1.2,0.6,50/100,0/200,1,30,3,"{cell}"\n'.encode(), file="c.csv")
+        for cell in (line, listed)
+    )  # fmt: skip
+    assert [one.id for one in short] == ["wool@50+0", "wool@50+200", "wool@100+0", "wool@100+200"]
+    assert [one.build_up for one in short] == [one.build_up for one in long]
+    assert (
+        short[1].coefficients.alpha[1] > 2 * short[0].coefficients.alpha[1]
+    )  # a gap is for the bass
+
+
+def test_the_wrong_layer_of_a_build_up_is_named():
+    row = 'wool,1.2,0.6,50,,1,30,3,"air 20 + porous 50"\n'
+    with pytest.raises(
+        CatalogueError, match=r"row 2 \(wool\), column build_up: layer 2 porous needs"
+    ):
+        products_from_bytes(f"{VARIED}{row}".encode(), file="c.csv")
