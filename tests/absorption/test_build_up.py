@@ -228,7 +228,7 @@ def test_sheets_before_wool_lie_beside_the_model_as_their_stated_uncertainty_say
 @pytest.mark.parametrize("model", ["miki", "delany-bazley"])
 def test_many_sizes_at_once_give_what_one_by_one_gives(model):
     """One layer at a time through the general build-up, with and without a gap."""
-    thickness = np.linspace(0.02, 0.2, 70)  # more than one block
+    thickness = np.linspace(0.02, 0.2, 70)
     gap = np.where(np.arange(70) % 3 == 0, 0.0, np.linspace(0.0, 0.4, 70))
     together = porous_octaves(thickness, gap, 12_000, model=model)
     assert together.shape == (70, 8)
