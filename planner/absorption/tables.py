@@ -62,17 +62,25 @@ def decoded(raw: bytes) -> str:
     return raw.decode("latin-1")
 
 
-def rows_of(text: str) -> list[Row]:
+def rows_of(text: str, *, whole: bool = False) -> list[Row]:
     """Rows of a table; lines that start with ``#`` are comments.
 
     The delimiter is the one of ``;``, tab and ``,`` that the heading line holds most of; with
     semicolons or tabs a comma inside a number is a decimal comma.
 
+    Parameters
+    ----------
+    text
+        Of the file.
+    whole
+        Refuse a row with more cells than there are headings: everything after a separator that should
+        have been in quotation marks would sit in the wrong column. Else the surplus is dropped, which
+        does no harm where only the last column holds free words.
+
     Raises
     ------
     csv.Error
-        A heading stands there twice, or a row has more cells than there are headings: everything
-        after a separator that should have been in quotation marks would sit in the wrong column.
+        A heading stands there twice, or a row has too many cells.
     """
     lines = text.replace("\r\n", "\n").replace("\r", "\n").split("\n")
     start = next((n for n, line in enumerate(lines) if not _is_remark(line)), None)
@@ -87,7 +95,7 @@ def rows_of(text: str) -> list[Row]:
             continue
         stripped = [cell.strip() for cell in cells]
         line = start + reader.line_num
-        if any(stripped[len(headings) :]):
+        if whole and any(stripped[len(headings) :]):
             raise csv.Error(
                 f"line {line} has {len(cells)} cells under {len(headings)} headings: "
                 "put text that holds the separator in quotation marks"
@@ -130,7 +138,7 @@ def read_table(
     if len(raw) > LARGEST_FILE:
         raise kind(f"is {len(raw) / 1e6:.1f} MB large", file=path, cure="A table has a few kB.")
     try:
-        rows = rows_of(decoded(raw))
+        rows = rows_of(decoded(raw), whole=True)
     except csv.Error as error:
         raise kind(f"is no table ({error})", file=path, cure="Save it as CSV.") from error
     if not rows:
