@@ -32,7 +32,7 @@ Array = NDArray[np.float64]
 ANGLES = 48
 """Nodes of the integral over the angle of incidence."""
 FIELD_DEG = 78.0
-"""Largest angle of field incidence. [°]"""
+"""Largest angle of field incidence; usual, from memory. [°]"""
 
 
 class Layer(Protocol):
