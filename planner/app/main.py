@@ -8,6 +8,7 @@ from pathlib import Path
 import streamlit as st
 
 from planner.app.launch import FOLDER_VARIABLE
+from planner.app.show import plain, refusal
 from planner.app.work import Work, drafts, new_draft, new_work, open_work
 from planner.errors import PlannerError
 
@@ -26,6 +27,17 @@ PAGES = (
     ("shopping.py", "Shopping list", ":material/shopping_cart:"),
     ("projects.py", "Projects", ":material/folder_open:"),
 )
+
+
+STYLE = """<style>
+[data-testid="stMainBlockContainer"] { padding-top: 4.5rem; padding-bottom: 4rem; }
+[data-testid="stCaptionContainer"], [data-testid="stCaptionContainer"] p { color: inherit; }
+[data-testid="stCaptionContainer"] { opacity: 0.85; }
+h1 { font-size: 2rem !important; padding: 0.25rem 0 0.5rem !important; }
+h2 { font-size: 1.45rem !important; }
+h3 { font-size: 1.2rem !important; }
+</style>"""
+"""Less empty space and smaller headings than usual; small print dark enough to read (4.5 : 1)."""
 
 
 def main() -> None:
@@ -48,11 +60,20 @@ def main() -> None:
         for number, (name, title, icon) in enumerate(PAGES)
     ]
     page = st.navigation(pages, position="top")
+    st.html(STYLE)
     work = current()
     st.query_params[QUERY] = str(work.folder)
+    asked = work.conflict
     _header(work)
-    page.run()
-    current().remember()
+    try:
+        page.run()
+        current().remember()
+    except PlannerError as error:
+        # Pages show refusals beside their cause; what reaches this (a full disk, a folder that
+        # was deleted meanwhile) concerns the whole page.
+        refusal(error)
+    if current().conflict != asked:
+        st.rerun()  # the question stands above the page
 
 
 def current() -> Work:
@@ -86,7 +107,8 @@ def _first() -> tuple[Work, list[str]]:
         try:
             if (folder / "room.toml").is_file():
                 return open_work(folder, next_serial())
-            if folder.is_dir() and not any(folder.iterdir()):
+            # An address may open what is there; only the command may begin something in a folder.
+            if QUERY not in st.query_params and folder.is_dir() and not any(folder.iterdir()):
                 return new_work(folder, next_serial()), []
             note = f"{folder.name} holds no room.toml: a new sketch was begun instead."
         except PlannerError as error:
@@ -97,27 +119,29 @@ def _first() -> tuple[Work, list[str]]:
 
 def _header(work: Work) -> None:
     """Name of the project, where it is kept, and anything that needs a decision."""
-    where = "a draft" if work.folder.parent == drafts() else f"kept in {work.folder.name}"
-    st.caption(f"**{_plain(work.room.name)}** · {where}; every change is saved at once")
+    where = "a draft" if work.folder.parent == drafts() else f"kept in {plain(work.folder.name)}"
+    st.caption(f"**{plain(work.room.name)}** · {where}; every change is saved at once")
     for note in st.session_state.get("notes", []):
-        st.warning(_plain(note))
+        st.warning(plain(note))
     if work.conflict:
-        st.error(
-            f"{work.conflict} was changed by someone else meanwhile. Nothing was overwritten: which "
-            "one is to stay?"
-        )
-        left, right, _ = st.columns([1, 1, 3])
-        if left.button("Take theirs", key="take-theirs"):
-            opened, notes = open_work(work.folder, next_serial())
-            show_work(opened, notes)
+        _conflict(work)
+
+
+def _conflict(work: Work) -> None:
+    """Ask whose version of a file is to stay."""
+    st.error(
+        f"{plain(work.conflict or '')} was changed by someone else meanwhile. Nothing was "
+        "overwritten: which one is to stay?"
+    )
+    with st.container(horizontal=True):
+        theirs = st.button("Take theirs", key="take-theirs")
+        mine = st.button("Keep mine", key="keep-mine")
+    try:
+        if theirs:
+            show_work(*open_work(work.folder, next_serial()))
             st.rerun()
-        if right.button("Keep mine", key="keep-mine"):
+        if mine:
             work.overwrite()
             st.rerun()
-
-
-def _plain(text: str) -> str:
-    """Text without meaning for Markdown."""
-    for sign in "\\`*_{}[]<>#$|~:":
-        text = text.replace(sign, f"\\{sign}")
-    return text
+    except PlannerError as error:
+        refusal(error)

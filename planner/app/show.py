@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import base64
 from collections.abc import Callable, Sequence
+from html import escape
 from typing import TYPE_CHECKING, Any
 
 import streamlit as st
@@ -39,6 +41,8 @@ def chart(picture: Chart, *, key: str, table: bool = True, height: int | None = 
         picture.sized("container", height or picture.spec.get("height", 260)).vega_lite(theme())
     )
     spec["autosize"] = {"type": "fit-x", "contains": "padding"}
+    # A screen reader gets the sentence and the table; nameless dots of a plot would only be in its way.
+    spec["config"] = {**spec["config"], "mark": {"aria": False}}
     st.vega_lite_chart(spec, width="stretch", theme=None, key=key)
     st.caption(plain(picture.description))
     if table:
@@ -47,8 +51,16 @@ def chart(picture: Chart, *, key: str, table: bool = True, height: int | None = 
 
 
 def drawing(svg: str, words: str) -> None:
-    """A drawing to scale, with words for those who do not see it."""
-    st.image(svg, width="stretch", caption=plain(words))
+    """A drawing to scale, with words for those who do not see it.
+
+    As an image it can neither run anything nor fetch anything, whatever names it holds.
+    """
+    source = base64.b64encode(svg.encode("utf-8")).decode("ascii")
+    st.html(
+        f'<img alt="{escape(words, quote=True)}" style="width: 100%; max-height: 80vh" '
+        f'src="data:image/svg+xml;base64,{source}">'
+    )
+    st.caption(plain(words))
 
 
 def refusal(error: PlannerError) -> None:
