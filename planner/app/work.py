@@ -43,6 +43,8 @@ NEW_ROOM: dict[str, Any] = {
 
 MOST_OPTIONS = 12
 
+SURVEY = "recordings/survey.csv"
+
 LOOKED_AT = "looked-at.toml"
 """What the pages show of a project, beside it; nothing that a result depends on without saying so."""
 
@@ -64,8 +66,8 @@ class Work:
     suggestion: Suggestion | None = None
     problem: PlannerError | None = None
     """Why the last change to the room was not taken."""
-    conflict: str | None = None
-    """Name of a file that changed on the disk meanwhile."""
+    unsaved: dict[str, str] = field(default_factory=dict)
+    """Texts that wait for a decision, by the name of a file that changed on the disk meanwhile."""
     serial: int = 0
     """Grows with every project that is opened: widgets of another project are not these."""
     digests: dict[str, str] = field(default_factory=dict)
@@ -85,6 +87,11 @@ class Work:
     def calibrating(self) -> Measured | None:
         """The measurement that corrects the room, where that is wanted."""
         return self.measured if self.use_measured else None
+
+    @property
+    def conflict(self) -> str | None:
+        """Name of a file that someone else changed meanwhile."""
+        return next(iter(self.unsaved), None)
 
     def change_room(self, data: dict[str, Any]) -> bool:
         """Take a changed description in metres; a refusal is kept in `problem`."""
@@ -116,11 +123,24 @@ class Work:
         self.save(f"options/{file_name(option.name)}.toml", option_to_toml(option))
 
     def remove_option(self, name: str) -> None:
-        """Forget an option and delete its file."""
-        self.options.pop(name, None)
-        path = self.folder / "options" / f"{file_name(name)}.toml"
+        """Forget an option and delete its file.
+
+        Raises
+        ------
+        OptionError
+            Someone else changed it meanwhile.
+        """
+        file = f"options/{file_name(name)}.toml"
+        path = self.folder / file
+        if path.is_file() and self.digests.get(file) not in (None, _digest(path)):
+            raise OptionError(
+                f"{name!r} was changed by someone else meanwhile and is not deleted",
+                cure="Open the project again to see it.",
+            )
         path.unlink(missing_ok=True)
-        self.digests.pop(f"options/{file_name(name)}.toml", None)
+        self.options.pop(name, None)
+        self.digests.pop(file, None)
+        self.unsaved.pop(file, None)
         if self.chosen == name:
             self.chosen = next(iter(self.options), None)
 
@@ -139,26 +159,22 @@ class Work:
     def save(self, name: str, text: str, *, force: bool = False) -> None:
         """Write a file of the project, unless it changed on the disk since it was read."""
         path = self.folder / name
-        known = self.digests.get(name)
-        if not force and path.is_file() and known is not None and _digest(path) != known:
-            self.conflict = name
+        if not force and path.is_file() and _digest(path) != self.digests.get(name):
+            self.unsaved[name] = text
             return
         write_atomically(path, text)
         self.digests[name] = _digest(path)
-        if self.conflict == name:
-            self.conflict = None
+        self.unsaved.pop(name, None)
+
+    def is_mine(self, name: str) -> bool:
+        """Does a file still hold what was last read or written here."""
+        path = self.folder / name
+        return path.is_file() and _digest(path) == self.digests.get(name)
 
     def overwrite(self) -> None:
-        """Settle a conflict with what is in the browser."""
-        name, self.conflict = self.conflict, None
-        if name == "room.toml":
-            self.save(name, room_to_toml(self.room), force=True)
-        elif name == "measured.csv" and self.measured is not None:
-            self.save(name, measured_to_csv(self.measured), force=True)
-        elif name:
-            for option in self.options.values():
-                if f"options/{file_name(option.name)}.toml" == name:
-                    self.save(name, option_to_toml(option), force=True)
+        """Settle every conflict with what is in the browser."""
+        for name, text in list(self.unsaved.items()):
+            self.save(name, text, force=True)
 
 
 def open_work(folder: Path, serial: int = 0) -> tuple[Work, list[str]]:
@@ -178,7 +194,9 @@ def open_work(folder: Path, serial: int = 0) -> tuple[Work, list[str]]:
         raise RoomError(
             error.what, file=folder / "room.toml", where=error.where, cure=error.cure
         ) from error
-    work.digests["room.toml"] = _digest(folder / "room.toml")
+    for name in ("room.toml", "catalogue.csv", SURVEY):
+        if (folder / name).is_file():
+            work.digests[name] = _digest(folder / name)
     for path in sorted((folder / "options").glob("*.toml"))[:MOST_OPTIONS]:
         try:
             option = read_option(path)

@@ -1,6 +1,7 @@
 """Every page: first start, one change, one refusal."""
 
 import shutil
+import tomllib
 from pathlib import Path
 
 import pytest
@@ -167,3 +168,84 @@ def test_a_start_without_a_folder_is_a_sketch(monkeypatch, tmp_path):
     app = AppTest.from_file(str(ROOT / "streamlit_app.py"), default_timeout=60).run()
     assert not app.exception
     assert any("a draft" in caption.value for caption in app.caption)
+
+
+def edit(app, part, edits):
+    """What a person types into a table: AppTest cannot, so that it is put where the browser leaves it."""
+    key = next(key for key in app.session_state["tables"] if key.startswith(part))
+    nothing = {"edited_rows": {}, "added_rows": [], "deleted_rows": []}
+    app.session_state[key] = {**nothing, **edits}
+    app.run()
+    assert not app.exception, app.exception
+    return app
+
+
+def saved(path):
+    return tomllib.loads(path.read_text(encoding="utf-8"))
+
+
+def test_counts_are_edited_one_after_the_other_and_kept(start, project):
+    file = project / "options" / "first.toml"
+    before = saved(file)["item"]
+    app = start("treatment.py")
+    assert saved(file)["item"] == before
+    edit(app, "edit-", {"edited_rows": {0: {"pieces": 1}}})
+    assert [item["count"] for item in saved(file)["item"]][:2] == [1, before[1]["count"]]
+    edit(app, "edit-", {"edited_rows": {0: {"pieces": 1}, 1: {"pieces": 3}}})
+    assert [item["count"] for item in saved(file)["item"]][:2] == [1, 3]
+    edit(app, "edit-", {"edited_rows": {0: {"pieces": 1}}, "deleted_rows": [1]})
+    assert len(saved(file)["item"]) == len(before) - 1
+
+
+@pytest.mark.parametrize(
+    ("cells", "words"),
+    [
+        ({"pieces": -4}, "greater than or equal to 1"),
+        ({"pieces": 90_000}, "fit"),
+        ({"product": "no-such-thing"}, "no product"),
+        ({"pieces": None, "area": float("inf")}, "finite"),
+    ],
+)
+def test_a_count_that_cannot_be_is_refused_and_the_option_stays(start, project, cells, words):
+    file = project / "options" / "first.toml"
+    before = file.read_bytes()
+    app = start("treatment.py")
+    edit(app, "edit-", {"edited_rows": {0: cells}})
+    assert any(words in error.value for error in app.error), [e.value for e in app.error]
+    assert file.read_bytes() == before
+
+
+def test_a_cell_of_nothing_takes_its_row_out(start, project):
+    file = project / "options" / "first.toml"
+    count = len(saved(file)["item"])
+    edit(start("treatment.py"), "edit-", {"edited_rows": {0: {"pieces": float("nan")}}})
+    assert len(saved(file)["item"]) == count - 1
+
+
+def test_a_price_in_the_catalogue_is_kept_and_nonsense_is_not(start, project):
+    file = project / "catalogue.csv"
+    app = start("treatment.py")
+    before = file.read_bytes()
+    edit(app, "catalogue-edit", {"edited_rows": {0: {"price_per_pack": "NaN"}}})
+    assert any("not a number" in error.value for error in app.error)
+    assert file.read_bytes() == before
+    edit(app, "catalogue-edit", {"edited_rows": {0: {"price_per_pack": "199.50"}}})
+    assert b"199.50" in file.read_bytes()
+
+
+def test_a_catalogue_that_broke_meanwhile_is_said_in_words(start, project):
+    (project / "catalogue.csv").write_text("id;what\n1;2;3\n")
+    app = start()
+    for page in ("treatment.py", "shopping.py", "room.py"):
+        app.switch_page(str(PAGES / page)).run()
+        assert not app.exception
+    app.switch_page(str(PAGES / "treatment.py")).run()
+    assert any("catalogue.csv" in error.value for error in app.error)
+
+
+def test_generic_products_become_the_projects_own(start, project):
+    (project / "catalogue.csv").unlink()
+    app = start("treatment.py")
+    next(b for b in app.button if b.label.startswith("Edit these")).click().run()
+    assert not app.exception
+    assert (project / "catalogue.csv").is_file()
