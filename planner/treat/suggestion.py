@@ -119,7 +119,8 @@ class Suggestion:
     confidence: float | None
     """Probability that was asked for. [-]"""
     gap: float
-    """Proven: no list is cheaper by more than this share. [-]"""
+    """Proven: no list is cheaper by more than this share; with a confidence, none that keeps the
+    margins which reach it. [-]"""
     deviation_s: float
     """Farthest that a judged band lies outside its limits. [s]"""
     short_bands: tuple[ShortBand, ...] = ()
