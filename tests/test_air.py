@@ -36,7 +36,7 @@ def test_the_table_of_iso_9613_2_to_its_printed_digits():
     "row", rows("iso9613_1_table1_points.csv"), ids=lambda r: f"{r['temp_C']}C-{r['nominal_Hz']}Hz"
 )
 def test_points_of_iso_9613_1(row):
-    """ISO 9613-1:1993, table 1; three printed digits, one point 0.39 % off in the transcription."""
+    """ISO 9613-1:1993, table 1; three printed digits, one point 0.39 % off as copied."""
     value = 1000 * attenuation_db_per_m(
         exact_midband(float(row["nominal_Hz"]), fraction=3),
         float(row["temp_C"]),
