@@ -189,7 +189,9 @@ def room_library(room: Room, library: Library | None = None) -> Library:
         try:
             own.append(own_material(material))
         except MaterialError as error:
-            where = ", ".join(filter(None, [f"[[material]] {material.id!r}", error.where]))
+            inner = error.where or repr(material.id)
+            named = inner if repr(material.id) in inner else f"{material.id!r}, {inner}"
+            where = f"[[material]] {named}"
             raise RoomError(error.what, where=where, cure=error.cure) from error
     return (library or builtin()).with_own(own)
 
