@@ -187,7 +187,6 @@ def read_recording(
         power = found.power[channel]
         findings = _overload(found, channel, file.duration_s)
         kept: list[BandEnergies] = []
-        stops_s: list[float] = []
 
         def read(first: int, last: int) -> NDArray[np.float32]:
             return np.ascontiguousarray(file.read(first, last)[:, channel])
@@ -195,28 +194,41 @@ def read_recording(
         bursts = stops.find_bursts(power)
         if not bursts:
             notes.append(_nothing_found(power))
+        usable: list[Burst] = []
         for number, burst in enumerate(bursts, 1):
             refusal, grave = _check(power, burst, number)
             findings.extend(finding for finding in grave if finding not in findings)
             if refusal:
                 notes.append(refusal)
-                continue
-            stop = _fine_stop(read, file.rate, burst, power)
+            else:
+                usable.append(burst)
+        stops_s = stops.regular(
+            [_fine_stop(read, file.rate, burst, power) / file.rate for burst in usable]
+        )
+        for burst, stop_s in zip(usable, stops_s, strict=True):
+            stop = round(stop_s * file.rate)
             end = _end_of_decay(power, burst, stop, file.rate, file.frames)
             start = max(
                 round(burst.start * FRAME_S * file.rate), stop - round(BEFORE_S * file.rate)
             )
-            energies = section_energies(
-                read, file.rate, start, end, offered, frame_s=0.001, origin=stop, reverse=reverse
+            kept.append(
+                section_energies(
+                    read,
+                    file.rate,
+                    start,
+                    end,
+                    offered,
+                    frame_s=0.001,
+                    origin=stop,
+                    reverse=reverse,
+                )
             )
-            kept.append(energies)
-            stops_s.append(stop / file.rate)
         findings.extend(_spectral(kept, read, file.rate, bursts, power))
         return Recording(
             file=file.path.name,
             channel=channel + 1,
             bursts=tuple(kept),
-            stops_s=tuple(stops_s),
+            stops_s=stops_s,
             findings=tuple(findings),
             notes=tuple(notes),
         )

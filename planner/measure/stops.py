@@ -7,6 +7,7 @@ roaring ventilator.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -38,11 +39,14 @@ SHORTEST_SILENCE_S = 0.4
 REACH_S, WINDOW_S = 0.15, 0.30
 """A switch-off is sought this far around its rough place, by the decay this long behind it. [s]"""
 
-TIMES_S = np.geomspace(0.06, 6.0, 36)
+TIMES_S = np.geomspace(0.06, 6.0, 24)
 """Reverberation times tried for that decay. [s]"""
 
 DROPS = (1.0, 0.8, 0.6, 0.4, 0.15)
 """Shares of the level that stay when the direct sound ends. [-]"""
+
+REGULAR_S = 0.02
+"""Switch-offs this near to a steady beat are taken to follow it. [s]"""
 
 DROP_COST = 0.8
 """A drop must explain the frames this much better than none; a frame counts some eight degrees of
@@ -177,15 +181,41 @@ def switch_off(power: Array, expected: int, floor: float) -> int:
         return expected
     floor = min(max(floor, 1e-6 * steady), 0.5 * steady)
     trial = _Trials(power[low:end], high - low, steady, floor)
-    coarse = min(trial(time_s, drop) for time_s in TIMES_S for drop in DROPS)
-    _, time_s, drop, _ = coarse
+    # The grid of times is coarse: each drop is judged by its own best time, refined.
+    return low + min(_refined(trial, drop) for drop in DROPS)[3]
+
+
+def regular(stops_s: Sequence[float]) -> tuple[float, ...]:
+    """Switch-offs of a signal with bursts of one length, each sharpened by all the others. [s].
+
+    From three on, when they lie within `REGULAR_S` of a steady beat (a test signal's, whatever the
+    two clocks make of it), that beat replaces them; any others stay as they were found.
+    """
+    found = np.asarray(stops_s, float)
+    if len(found) < 3:
+        return tuple(float(stop) for stop in found)
+    beat = float(np.median(np.diff(found)))
+    count = np.round((found - found[0]) / beat) if beat > 0 else np.zeros(len(found))
+    if len(np.unique(count)) < len(found):
+        return tuple(float(stop) for stop in found)
+    fitted = np.polyval(np.polyfit(count, found, 1), count)
+    if np.abs(found - fitted).max() > REGULAR_S:
+        return tuple(float(stop) for stop in found)
+    return tuple(float(stop) for stop in fitted)
+
+
+def _refined(trial: _Trials, drop: float) -> tuple[float, float, float, int]:
+    """The best trial with about this drop."""
+    coarse = min(trial(time_s, drop) for time_s in TIMES_S)
     step = float(TIMES_S[1] / TIMES_S[0])
-    fine = min(
-        trial(time_s * factor, min(drop * share, 1.0))
-        for factor in np.geomspace(1.0 / step, step, 15)
-        for share in ((0.85, 0.92, 1.0, 1.08) if drop < 1.0 else (1.0,))
+    shares = (0.9, 1.0, 1.1) if drop < 1.0 else (1.0,)
+    return min(
+        trial(coarse[1] * factor, min(drop * share, 0.999))
+        if drop < 1.0
+        else trial(coarse[1] * factor, 1.0)
+        for factor in np.geomspace(1.0 / step, step, 9)
+        for share in shares
     )
-    return low + min(coarse, fine)[3]
 
 
 class _Trials:
