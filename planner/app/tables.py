@@ -29,9 +29,8 @@ def edited(base: pd.DataFrame, *, key: str, **looks: Any) -> pd.DataFrame:
     held = st.session_state.setdefault(HELD, {})
     if key not in st.session_state or key not in held:
         held[key] = base
-    table: pd.DataFrame = st.data_editor(
-        held[key], num_rows="dynamic", width="stretch", hide_index=True, key=key, **looks
-    )
+    looks = {"num_rows": "dynamic", "width": "stretch", "hide_index": True, **looks}
+    table: pd.DataFrame = st.data_editor(held[key], key=key, **looks)
     return table
 
 

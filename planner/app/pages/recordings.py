@@ -3,20 +3,22 @@
 from __future__ import annotations
 
 import io
-from pathlib import Path
 from typing import Any
 
 import numpy as np
+import pandas as pd
 import streamlit as st
 
-from planner.app import show
+from planner.app import show, survey
 from planner.app.main import current
-from planner.app.work import file_name
+from planner.app.tables import HELD, cells, edited
+from planner.app.work import SURVEY
 from planner.errors import PlannerError
-from planner.measure.measurement import SOUND, measure
+from planner.measure.measured import measured_to_csv
+from planner.measure.measurement import SOUND
 from planner.measure.noise import cue_sheet, lengths_for, noise_signal
+from planner.measure.survey import KINDS, STATES
 from planner.report import charts
-from planner.storage import write_atomically
 
 work = current()
 folder = work.folder / "recordings"
@@ -71,43 +73,89 @@ with st.expander("Test signal to play on site", expanded=work.measured is None):
     signal_download()
 
 st.header("Files")
-uploads = st.file_uploader(
-    "Recordings from the site (WAV, FLAC, AIFF …)",
-    type=[ending.lstrip(".") for ending in SOUND] + ["csv"],
-    accept_multiple_files=True,
-    key=f"uploads-{work.serial}-{st.session_state.get('uploaded', 0)}",
-    help="They are kept in the folder recordings of this project. survey.csv says which position each is; "
-    "else the names do: A2.wav is source A, microphone 2.",
-)
-if uploads:
-    for one in uploads:
-        suffix = Path(one.name).suffix.lower()
-        name = (
-            "survey.csv"
-            if one.name.lower() == "survey.csv"
-            else f"{file_name(Path(one.name).stem)}{suffix}"
+
+
+def uploads() -> None:
+    """Take what is dropped into the project's folder; nothing of it stays in memory."""
+    dropped = st.file_uploader(
+        "Recordings from the site (WAV, FLAC, AIFF …)",
+        type=[ending.lstrip(".") for ending in SOUND] + ["csv"],
+        accept_multiple_files=True,
+        key=f"uploads-{work.serial}-{st.session_state.get('uploaded', 0)}",
+        help="They are kept in the folder recordings of this project. survey.csv says which position "
+        "each is; else the names do: A2.wav is source A, microphone 2.",
+    )
+    if dropped:
+        said: list[tuple[bool, str]] = []
+        for one in dropped:
+            try:
+                note = survey.take(work, one.name, one.getvalue())
+                if note:
+                    said.append((True, note))
+            except PlannerError as error:
+                said.append((False, f"{one.name}: not kept. {error}"))
+        st.session_state["upload-notes"] = said
+        st.session_state["uploaded"] = st.session_state.get("uploaded", 0) + 1
+        st.rerun()
+    for fine, text in st.session_state.get("upload-notes", []):
+        (st.info if fine else st.error)(show.plain(text))
+
+
+def positions(names: list[str]) -> None:
+    """Which position each recording is; kept as survey.csv as soon as it holds."""
+    with st.expander("Which position is which recording"):
+        known = show.guarded(lambda: survey.places(work, names))
+        if known is None:
+            return
+        base = pd.DataFrame(
+            [
+                {
+                    "file": place.file,
+                    "source_position": place.source,
+                    "microphone_position": place.microphone,
+                    "state": place.state,
+                    "kind": place.kind,
+                    "note": place.note,
+                }
+                for place in known.values()
+            ],
+            dtype=str,
         )
-        write_atomically(folder / name, one.getvalue())
-    st.session_state["uploaded"] = st.session_state.get("uploaded", 0) + 1
-    st.rerun()
+        key = f"survey-{work.serial}-{'|'.join(names)}"
+        table = edited(
+            base,
+            key=key,
+            num_rows="fixed",
+            column_config={
+                "file": st.column_config.TextColumn("Recording", disabled=True),
+                "source_position": st.column_config.TextColumn("Source", required=True),
+                "microphone_position": st.column_config.TextColumn("Microphone", required=True),
+                "state": st.column_config.SelectboxColumn("Room was", options=["", *STATES]),
+                "kind": st.column_config.SelectboxColumn("Kind", options=list(KINDS)),
+                "note": st.column_config.TextColumn("Note"),
+            },
+        )
+        typed = not table.equals(st.session_state[HELD][key])
+        if cells(table) != cells(base) and (typed or work.is_mine(SURVEY)):
+            text = show.guarded(lambda: survey.survey_text(cells(table)))
+            if text is not None:
+                work.save(SURVEY, text)
+        st.caption(
+            "Two sources and three microphone positions, two decays each, make the engineering "
+            "method of ISO 3382-2 (from memory). Every change is kept at once."
+        )
 
-present = (
-    sorted(p for p in folder.glob("*") if p.suffix.lower() in SOUND) if folder.is_dir() else []
-)
-if not present:
-    st.info(f"No recordings are in {work.folder.name}/recordings yet: drop some above.")
-chosen = st.multiselect(
-    "Evaluate", [p.name for p in present], default=[p.name for p in present],
-    key=f"chosen-{work.serial}-{len(present)}",
-)  # fmt: skip
-left, middle, right = st.columns(3)
-impulse = left.checkbox("They hold claps, balloons or impulse responses", key="impulse")
-thirds = middle.checkbox("One-third octaves", key="thirds")
-state = right.selectbox(
-    "State of the room", ["as in survey.csv", "empty", "furnished", "occupied"], key="state"
-)
 
-if st.button("Evaluate recordings", type="primary", disabled=not chosen, key="evaluate"):
+def evaluate(chosen: list[str]) -> None:
+    """Evaluate the chosen recordings; the same ones are not worked out twice."""
+    with st.container(horizontal=True, vertical_alignment="bottom"):
+        impulse = st.checkbox("They hold claps, balloons or impulse responses", key="impulse")
+        thirds = st.checkbox("One-third octaves", key="thirds")
+        state = st.selectbox(
+            "State of the room", ["as in the table above", *STATES], key="state", width=240
+        )
+    if not st.button("Evaluate recordings", type="primary", disabled=not chosen, key="evaluate"):
+        return
     bar = st.progress(0.0, "Reading …")
 
     def tell(done: int, total: int) -> None:
@@ -115,20 +163,36 @@ if st.button("Evaluate recordings", type="primary", disabled=not chosen, key="ev
         bar.progress(done / total, f"{done} of {total} recordings")
 
     try:
-        result = measure(
+        result = survey.evaluated(
+            work,
             [folder / name for name in chosen],
             impulse=impulse,
             thirds=thirds,
-            air=work.room.air_state(),
             state="" if state.startswith("as") else state,
             progress=tell,
         )
+        if work.measured is None or measured_to_csv(work.measured) != measured_to_csv(
+            result.measured
+        ):
+            work.use_measured = False  # another measurement is to be looked at before it counts
         work.set_measured(result)
-        work.use_measured = False
     except PlannerError as error:
         show.refusal(error)
     finally:
         bar.empty()
+
+
+uploads()
+present = [p.name for p in sorted(folder.glob("*")) if p.suffix.lower() in SOUND]
+if present:
+    positions(present)
+    evaluate(
+        st.multiselect(
+            "Evaluate", present, default=present, key=f"chosen-{work.serial}-{len(present)}"
+        )
+    )
+else:
+    st.info(f"No recordings are in {show.plain(work.folder.name)}/recordings yet: drop some above.")
 
 
 def results() -> None:
@@ -171,11 +235,12 @@ def results() -> None:
     )
     if work.measurement is not None:
         decays()
+    elif present:
+        st.caption("Evaluate the recordings once more to look at their decays.")
 
 
 def table(measured: Any) -> Any:
     """Every band in words and numbers."""
-    import pandas as pd
 
     def shown(value: float, digits: int = 2) -> str:
         return f"{value:.{digits}f}" if np.isfinite(value) else "–"
@@ -191,7 +256,7 @@ def table(measured: Any) -> Any:
                 "T30 (s)": shown(measured.t30_s[n]),
                 "EDT (s)": shown(measured.edt_s[n]),
                 "range (dB)": shown(measured.range_db[n], 0),
-                "doubts": "; ".join(measured.flags[n]),
+                "doubts": "; ".join(map(survey.flag_in_words, measured.flags[n])),
             }
             for n, hz in enumerate(measured.bands_hz)
         ]
@@ -219,7 +284,7 @@ def decays() -> None:
     )  # fmt: skip
     band = each[number]
     if len(band.curve.time_s):
-        show.chart(charts.decay(decay_picture(band)), key="decay", table=False)
+        show.chart(charts.decay(decay_picture(band)), key="decay")
     st.markdown(show.plain(band.reason or "evaluated"))
 
 
