@@ -247,6 +247,7 @@ class Project:
         time_limit: float = 10.0,
         name: str = "suggested",
         second_opinion: bool = True,
+        simulate: bool = False,
     ) -> tuple[Suggestion, Placement]:
         """The cheapest treatment inside the target that can also be hung.
 
@@ -264,6 +265,8 @@ class Project:
             Of the option.
         second_opinion
             Ask the directional formulas too.
+        simulate
+            Ask the simulation as well; where it sees the target missed, the limits are corrected.
 
         Returns
         -------
@@ -289,6 +292,7 @@ class Project:
                 room_draws=asked.draws,
                 time_limit=time_limit,
                 second_opinion=second_opinion,
+                simulation=self._traced if simulate else None,
                 name=name,
             )
             placement = self.place(answer.option)
@@ -296,6 +300,12 @@ class Project:
                 break
             fitting = fitting.tightened(placement)
         return replace(answer, option=placement.in_option(answer.option)), placement
+
+    def _traced(self, surfaces: RoomSurfaces) -> NDArray[np.float64]:
+        """Reverberation time of a treated room by simulation. [s]."""
+        from planner.predict.simulation import simulate_room
+
+        return simulate_room(self.room, surfaces, self.air).reverberation_time
 
     def alternatives(
         self,

@@ -46,6 +46,10 @@ def suggest(
     time_limit: Annotated[
         float, typer.Option("--time-limit", metavar="S", min=0.5, max=600)
     ] = 10.0,
+    simulate: Annotated[
+        bool,
+        typer.Option("--simulate", help="Also ask a geometrical simulation of the treated room."),
+    ] = False,
     alternatives: Annotated[
         int,
         typer.Option("--alternatives", min=0, max=5, help="Also lists made of other products."),
@@ -61,7 +65,12 @@ def suggest(
     before = None if measured is None else read_measured(measured)
     name = output.stem if output is not None else "suggested"
     answer, placement = project.suggest(
-        before, budget=budget, confidence=confidence, time_limit=time_limit, name=name
+        before,
+        budget=budget,
+        confidence=confidence,
+        time_limit=time_limit,
+        name=name,
+        simulate=simulate,
     )
     others = project.alternatives(answer, before, alternatives) if alternatives else ()
     written = write_option(output, answer.option) if output is not None else None
@@ -140,7 +149,8 @@ def _show(answer: Suggestion, *, brief: bool = False) -> None:
         for relaxation in answer.relaxations:
             say(f"It could be met: {relaxation.says}")
     if answer.second_opinion is not None:
-        say(answer.second_opinion.says)
+        says = answer.second_opinion.says.rstrip(".")
+        say(f"{says[:1].upper()}{says[1:]}.")
     warn_all(answer.warnings)
 
 
