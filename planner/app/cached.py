@@ -16,6 +16,7 @@ from planner.treat.option import option_from, option_to_toml
 
 if TYPE_CHECKING:
     from planner.measure.measured import Measured
+    from planner.predict.mode_shapes import PlanPressure
     from planner.predict.prediction import Prediction
     from planner.predict.room_modes import RoomModes
     from planner.reconcile.compare import Comparison
@@ -39,6 +40,11 @@ def alternative(work: Work, option: Option) -> Alternative:
 def modes(work: Work, highest_hz: float) -> RoomModes:
     """Modes of the room."""
     return _modes(room_to_toml(work.room), highest_hz)
+
+
+def mode_plan(work: Work, highest_hz: float, number: int) -> PlanPressure:
+    """Pressure of one mode over the plan."""
+    return _mode_plan(room_to_toml(work.room), highest_hz, number)
 
 
 def comparison(work: Work) -> Comparison:
@@ -91,6 +97,21 @@ def _alternative(room: str, option: str, measured: str, folder: str, digest: str
 @st.cache_data(max_entries=16, show_spinner="Finding the modes …")
 def _modes(room: str, highest_hz: float) -> RoomModes:
     return Project(parse_room(room), Path()).modes(highest_hz)
+
+
+@st.cache_data(max_entries=32, show_spinner=False)
+def _mode_plan(room: str, highest_hz: float, number: int) -> PlanPressure:
+    from planner.air import speed_of_sound
+    from planner.predict.mode_shapes import plan_pressure
+
+    described = parse_room(room)
+    return plan_pressure(
+        described.footprint,
+        _modes(room, highest_hz).modes.orders[number],
+        rectangle=described.is_rectangle,
+        highest_hz=highest_hz,
+        speed_of_sound=float(speed_of_sound(described.air_state().temperature_c)),
+    )
 
 
 @st.cache_data(max_entries=16, show_spinner="Comparing …")

@@ -35,15 +35,18 @@ def plain(text: str) -> str:
     return text
 
 
-def chart(picture: Chart, *, key: str, table: bool = True, height: int | None = None) -> None:
-    """A chart over the whole width, its message in words, and the same numbers as a table."""
-    spec = dict(
-        picture.sized("container", height or picture.spec.get("height", 260)).vega_lite(theme())
-    )
-    spec["autosize"] = {"type": "fit-x", "contains": "padding"}
+def chart(picture: Chart, *, key: str, table: bool = True, to_scale: bool = False) -> None:
+    """A chart over the whole width, its message in words, and the same numbers as a table.
+
+    One that is drawn to scale keeps its own size instead.
+    """
+    sized = picture if to_scale else picture.sized("container", picture.spec.get("height", 260))
+    spec = dict(sized.vega_lite(theme()))
+    if not to_scale:
+        spec["autosize"] = {"type": "fit-x", "contains": "padding"}
     # A screen reader gets the sentence and the table; nameless dots of a plot would only be in its way.
     spec["config"] = {**spec["config"], "mark": {"aria": False}}
-    st.vega_lite_chart(spec, width="stretch", theme=None, key=key)
+    st.vega_lite_chart(spec, width="content" if to_scale else "stretch", theme=None, key=key)
     st.caption(plain(picture.description))
     if table:
         with st.expander(f"Numbers: {plain(picture.title)}"):

@@ -23,7 +23,7 @@ from planner.measure.measured import Measured, measured_to_csv, read_measured
 from planner.measure.measurement import Measurement
 from planner.project import Project
 from planner.room.files import read_room, room_from, room_to_toml
-from planner.room.model import Room
+from planner.room.model import RECTANGLE_WALLS, Room
 from planner.storage import write_atomically
 from planner.treat.option import Option, option_to_toml, read_option
 from planner.treat.suggestion import Suggestion
@@ -95,8 +95,9 @@ class Work:
 
     def change_room(self, data: dict[str, Any]) -> bool:
         """Take a changed description in metres; a refusal is kept in `problem`."""
+        names = new_wall_names(self.room, data)
         try:
-            room = room_from(data, lengths_in="m")
+            room = room_from(renamed(data, names), lengths_in="m")
             Project(room, self.folder).surfaces  # noqa: B018 - refuses unknown materials
         except PlannerError as error:
             self.problem = error
@@ -106,6 +107,9 @@ class Work:
             self.room = room
             self.suggestion = None
             self.save("room.toml", room_to_toml(room))
+            if names:
+                for option in list(self.options.values()):
+                    self.set_option(_moved(option, names), replacing=option.name)
         return True
 
     def set_option(self, option: Option, *, replacing: str | None = None) -> None:
@@ -175,6 +179,43 @@ class Work:
         """Settle every conflict with what is in the browser."""
         for name, text in list(self.unsaved.items()):
             self.save(name, text, force=True)
+
+
+def new_wall_names(room: Room, data: dict[str, Any]) -> dict[str, str]:
+    """Old and new names of the walls where a rectangle becomes corners or the other way round."""
+    corners = data["shape"].get("footprint")
+    if room.is_rectangle is (corners is None):
+        return {}
+    numbered = tuple(f"wall-{n + 1}" for n in range(len(RECTANGLE_WALLS)))
+    old, new = (RECTANGLE_WALLS, numbered) if room.is_rectangle else (numbered, RECTANGLE_WALLS)
+    return dict(zip(old, new, strict=True))
+
+
+def renamed(data: dict[str, Any], names: dict[str, str]) -> dict[str, Any]:
+    """A description in which walls have other names, wherever they are named."""
+    if not names:
+        return data
+
+    def of(name: str) -> str:
+        return names.get(name, name)
+
+    data = {**data, "treatment": dict(data["treatment"])}
+    for part, key in (("opening", "wall"), ("patch", "on"), ("keep_out", "on")):
+        data[part] = [{**entry, key: of(entry[key])} for entry in data[part]]
+    limits = data["treatment"]
+    limits["keep_clear"] = [of(name) for name in limits["keep_clear"]]
+    limits["symmetric"] = [tuple(of(name) for name in pair) for pair in limits["symmetric"]]
+    for table in ("max_cover", "max_weight_kg"):
+        limits[table] = {of(name): value for name, value in limits[table].items()}
+    return data
+
+
+def _moved(option: Option, names: dict[str, str]) -> Option:
+    items = [
+        item.model_copy(update={"surface": names.get(item.surface, item.surface)})
+        for item in option.items
+    ]
+    return option.model_copy(update={"items": tuple(items)})
 
 
 def open_work(folder: Path, serial: int = 0) -> tuple[Work, list[str]]:

@@ -177,7 +177,7 @@ def test_a_start_without_a_folder_is_a_sketch(monkeypatch, tmp_path):
 
 def edit(app, part, edits):
     """What a person types into a table: AppTest cannot, so that it is put where the browser leaves it."""
-    key = next(key for key in app.session_state["tables"] if key.startswith(part))
+    key = [key for key in app.session_state["tables"] if key.startswith(part)][-1]
     nothing = {"edited_rows": {}, "added_rows": [], "deleted_rows": []}
     app.session_state[key] = {**nothing, **edits}
     app.run()
@@ -315,3 +315,45 @@ def test_a_zip_that_wants_out_is_refused_and_an_honest_one_opened(start, project
     assert not app.exception
     assert app.session_state["work"].folder != project
     assert app.session_state["work"].room.name == "Control room in the old net loft"
+
+
+def test_a_door_that_leaves_its_wall_is_refused_beside_its_fields(start, project):
+    app = start()
+    before = (project / "room.toml").read_text(encoding="utf-8")
+    group = next(box for box in app.expander if box.label.startswith("Doors"))
+    group.text_input[0].set_value("40").run()
+    group = next(box for box in app.expander if box.label.startswith("Doors"))
+    assert any("leaves the surface" in error.value for error in group.error)
+    assert any("not taken" in warning.value for warning in app.warning)
+    assert (project / "room.toml").read_text(encoding="utf-8") == before
+
+
+def test_corners_are_added_one_after_the_other(start, project):
+    app = start()
+    next(one for one in app.radio if one.label == "Plan").set_value("corners").run()
+    assert saved(project / "room.toml")["shape"]["footprint"] == [
+        [0, 0],
+        [5.2, 0],
+        [5.2, 3.9],
+        [0, 3.9],
+    ]
+    # An alcove in the left corner at the back, by hand.
+    edit(app, "room-", {"edited_rows": {2: {"y": 3.5}}})
+    assert saved(project / "room.toml")["shape"]["footprint"][2] == [5.2, 3.5]
+    edit(app, "room-", {"edited_rows": {2: {"y": 3.5}, 3: {"x": 3.0, "y": 3.5}},
+                        "added_rows": [{"x": 3.0, "y": 3.9}, {"x": 0.0, "y": 3.9}]})  # fmt: skip
+    expected = [[0, 0], [5.2, 0], [5.2, 3.5], [3.0, 3.5], [3.0, 3.9], [0, 3.9]]
+    assert saved(project / "room.toml")["shape"]["footprint"] == expected
+    app.run()
+    assert saved(project / "room.toml")["shape"]["footprint"] == expected
+    edit(app, "room-", {"edited_rows": {2: {"y": float("nan")}}, "deleted_rows": [1]})
+    assert any("corners" in error.value for error in app.error)
+
+
+def test_a_mode_is_shown_in_plan(start):
+    app = start("prediction.py")
+    mode = next(one for one in app.selectbox if one.label == "Mode")
+    assert mode.options[0].startswith("33.")  # 343 / (2 · 5.20 m) = 33.0 Hz by hand
+    mode.set_value(2).run()
+    assert not app.exception
+    assert any("largest where the plan is darkest" in one.value for one in app.caption)

@@ -121,3 +121,49 @@ def test_the_network_is_an_explicit_choice_with_a_warning(monkeypatch, capsys):
     assert "0.0.0.0" in commands[0]
     assert launch(None, browser=False) == 0
     assert "127.0.0.1" in commands[1]
+
+
+def test_a_rectangle_becomes_corners_with_everything_on_its_walls(work):
+    """Edges anticlockwise from the origin: left (y = 0), back, right, front; names by hand."""
+    data = work.room.model_dump(by_alias=True)
+    before = {(one.kind, one.wall) for one in work.room.openings}
+    length, width, _ = work.room.dimensions
+    corners = [(0.0, 0.0), (length, 0.0), (length, width), (0.0, width)]
+    data["shape"] = {**data["shape"], "length": None, "width": None, "footprint": corners}
+    assert work.change_room(data), work.problem
+    names = {"left": "wall-1", "back": "wall-2", "right": "wall-3", "front": "wall-4"}
+    assert {(one.kind, one.wall) for one in work.room.openings} == {
+        (kind, names[wall]) for kind, wall in before
+    }
+    surfaces = {item.surface for item in work.options["first"].items}
+    assert surfaces <= {"ceiling", "floor", "free", *names.values()}
+    back = work.room.model_dump(by_alias=True)
+    back["shape"] = {**back["shape"], "length": length, "width": width, "footprint": None}
+    assert work.change_room(back), work.problem
+    assert {(one.kind, one.wall) for one in work.room.openings} == before
+
+
+def test_two_tabs_on_one_option_and_one_catalogue(work):
+    """Neither a catalogue nor an option that someone else changed is overwritten or deleted unasked."""
+    other, _ = open_work(work.folder)
+    option = work.options["first"]
+    other.set_option(option.model_copy(update={"note": "theirs"}))
+    other.save("catalogue.csv", "theirs")
+    with pytest.raises(OptionError, match="someone else"):
+        work.remove_option("first")
+    work.set_option(option.model_copy(update={"note": "mine"}))
+    work.save("catalogue.csv", "mine")
+    assert work.conflict == "options/first.toml"
+    assert "theirs" in (work.folder / "options" / "first.toml").read_text(encoding="utf-8")
+    work.overwrite()
+    assert work.conflict is None
+    assert "mine" in (work.folder / "options" / "first.toml").read_text(encoding="utf-8")
+    assert (work.folder / "catalogue.csv").read_text(encoding="utf-8") == "mine"
+
+
+def test_a_file_that_appeared_meanwhile_is_not_overwritten(work):
+    other, _ = open_work(work.folder)
+    option = work.options["first"]
+    other.set_option(option.model_copy(update={"name": "Suggestion 1", "note": "theirs"}))
+    work.set_option(option.model_copy(update={"name": "Suggestion 1", "note": "mine"}))
+    assert work.conflict == "options/suggestion-1.toml"

@@ -7,6 +7,7 @@ import streamlit as st
 from planner.app import cached, show
 from planner.app.main import current
 from planner.bands import OCTAVES, band_label
+from planner.predict.room_modes import RoomModes
 from planner.report import charts
 
 work = current()
@@ -74,6 +75,54 @@ with st.expander("What the interval comes from"):
     st.caption("Share of each uncertain input in the variance, per octave band (%).")
 show.notes(prediction.warnings)
 
+
+def proportions(found: RoomModes) -> None:
+    """Published criteria, held or not, in words."""
+    if not found.criteria:
+        return
+    st.subheader("Proportions, by published criteria")
+    for one in found.criteria:
+        verdict = ":material/check: Holds" if one.holds else ":material/close: Does not hold"
+        st.markdown(
+            f"**{verdict}** – {show.plain(one.name)}: {show.plain(one.numbers)}  \n"
+            f":small[{show.plain(one.source)}]"
+        )
+    if found.rating is not None:
+        st.markdown(show.plain(f"This room: {found.rating.reason}."))
+
+
+def plan_of_mode(found: RoomModes) -> None:
+    """Where in plan one mode is loud."""
+    modes = found.modes
+    if not len(modes.hz):
+        return
+    st.subheader("One mode in plan")
+    number = st.selectbox(
+        "Mode",
+        range(len(modes.hz)),
+        format_func=lambda n: f"{modes.hz[n]:.1f} Hz, {modes.kinds[n]}, {modes.labels[n]}",
+        key=f"mode-{work.serial}-{len(modes.hz)}",
+    )
+    plan = show.guarded(lambda: cached.mode_plan(work, found.highest_hz, number))
+    if plan is None:
+        return
+    positions = work.room.positions
+    show.chart(
+        charts.mode_pressure(
+            plan.x,
+            plan.y,
+            plan.pressure,
+            outline=work.room.footprint,
+            seat=positions.seat,
+            loudspeakers=positions.loudspeakers,
+            title=f"Pressure at {modes.hz[number]:.1f} Hz",
+            width=270,
+        ),
+        key="mode-plan",
+        to_scale=True,
+    )
+
+
 st.header("Modes")
 highest = st.slider("Up to (Hz)", 60, 300, 150, 10, key=f"modes-{work.serial}")
 found = show.guarded(lambda: cached.modes(work, float(highest)))
@@ -87,13 +136,7 @@ if found is not None:
     left, right = st.columns(2, gap="large")
     with left:
         show.chart(charts.mode_count(found.bands_hz, found.count), key="mode-count")
+        proportions(found)
     with right:
-        st.markdown("**Proportions, by published criteria**")
-        for one in found.criteria:
-            st.markdown(
-                f"{'✓' if one.holds else '✗'} {show.plain(one.name)}: {show.plain(one.numbers)}"
-            )
-            st.caption(show.plain(one.source))
-        if found.rating is not None:
-            st.markdown(show.plain(f"This room: {found.rating.reason}."))
+        plan_of_mode(found)
     show.notes(found.warnings, "About the modes")

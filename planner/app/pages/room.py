@@ -5,23 +5,26 @@ from __future__ import annotations
 from typing import Any
 
 import streamlit as st
+from streamlit.delta_generator import DeltaGenerator
 
 from planner.absorption.library import builtin
 from planner.app import cached, show
 from planner.app.main import current
-from planner.app.work import Work
+from planner.errors import PlannerError
 from planner.predict.targets import USES
 from planner.report import charts
 from planner.report.drawings import on_screen
+from planner.room.model import RECTANGLE_WALLS
 
 work = current()
 units = work.room.units
+box = work.room.is_rectangle
 data = work.room.model_dump(by_alias=True)
 
 
 def key(name: str) -> str:
     """Key of a field of this project."""
-    return f"room-{work.serial}-{units}-{name}"
+    return f"room-{work.serial}-{units}-{'box' if box else 'corners'}-{name}"
 
 
 def materials(per_item: bool = False) -> dict[str, str]:
@@ -75,25 +78,22 @@ def sizes(data: dict[str, Any]) -> None:
         height = show.length("Height", height, units, key=key("height")) or height
         data["shape"] = {**data["shape"], "length": None, "width": None, "footprint": corners()}
     data["shape"]["height"] = height
-    if kind == "rectangle" and isinstance(data["surfaces"]["walls"], list | tuple):
-        data["surfaces"]["walls"] = data["surfaces"]["walls"][0]
-    if kind == "corners" and isinstance(data["surfaces"]["walls"], dict):
-        data["surfaces"]["walls"] = next(iter(data["surfaces"]["walls"].values()))
 
 
 def corners() -> list[tuple[float, float]]:
     """Corners in plan, as a table of x and y."""
     import pandas as pd
 
+    from planner.app.tables import edited
     from planner.room.lengths import METRES_PER
 
     base = pd.DataFrame(work.room.footprint / METRES_PER[units], columns=["x", "y"]).round(4)
     st.caption("Corners in plan, anticlockwise; x from front to back, y from left to right.")
-    edited = st.data_editor(
-        base, num_rows="dynamic", width="stretch", key=key("corners"),
+    table = edited(
+        base, key=key("corners"),
         column_config={c: st.column_config.NumberColumn(f"{c} ({units})", format="%.3f") for c in "xy"},
     )  # fmt: skip
-    rows = edited.dropna().to_numpy(dtype=float, copy=True) * METRES_PER[units]
+    rows = table.dropna().to_numpy(dtype=float, copy=True) * METRES_PER[units]
     return [(float(x), float(y)) for x, y in rows]
 
 
@@ -110,8 +110,15 @@ def surfaces(data: dict[str, Any]) -> None:
     if st.checkbox("All walls alike", value=same, key=key("alike")):
         found["walls"] = choose("Walls", chosen[walls[0]], options, "m-walls")
     else:
-        each = {name: choose(f"Wall {name}", chosen[name], options, f"m-{name}") for name in walls}
-        found["walls"] = each if work.room.is_rectangle else list(each.values())
+        each = [choose(f"Wall {name}", chosen[name], options, f"m-{name}") for name in walls]
+        footprint = data["shape"]["footprint"]
+        # A new corner makes a new wall: it begins as the one before it.
+        names = RECTANGLE_WALLS if footprint is None else range(len(footprint))
+        each += each[-1:] * (len(names) - len(each))
+        each = each[: len(names)]
+        found["walls"] = (
+            dict(zip(RECTANGLE_WALLS, each, strict=True)) if footprint is None else each
+        )
     data["surfaces"] = found
     with st.expander("Their coefficients"):
         rows = work.project.surfaces
@@ -274,47 +281,81 @@ def target_and_air(data: dict[str, Any]) -> None:
     data["air"] = air
 
 
-def describe(work: Work) -> None:
-    """All fields; takes the change at their end."""
+SECTIONS = {
+    "shape": "sizes", "name": "sizes", "units": "sizes", "surfaces": "surfaces", "opening": "opening",
+    "patch": "patch", "furnishing": "furnishing", "keep_out": "keep_out", "positions": "places",
+    "target": "target", "air": "target",
+}  # fmt: skip
+"""Where the fields stand that a part of the room file belongs to."""
+
+
+def section(name: str, title: str, *, expanded: bool = False) -> DeltaGenerator:
+    """A group of fields, open where its last change was refused, with a place for the refusal."""
+    refused = work.problem is not None and place_of(work.problem) == name
+    box = st.expander(title, expanded=expanded or refused)
+    slots[name] = box.container()
+    return box
+
+
+def place_of(problem: PlannerError) -> str:
+    """Group of fields that a refusal is about."""
+    words = (getattr(problem, "where", None) or "").replace("[", " ").replace("]", " ").split()
+    return SECTIONS.get(words[0], "sizes") if words else "surfaces"
+
+
+def describe() -> None:
+    """All fields, group by group."""
     with st.container(border=True):
+        slots["sizes"] = st.container()
         sizes(data)
-    if work.problem is not None:
-        show.refusal(work.problem)
-        st.caption("The last description that holds is used until this is put right.")
-    with st.expander("Surfaces", expanded=True):
+    with section("surfaces", "Surfaces", expanded=True):
         surfaces(data)
-    with st.expander(f"Doors and windows ({len(data['opening'])})"):
+    with section("opening", f"Doors and windows ({len(data['opening'])})"):
         things(data, "opening", "Opening", {
             "wall": work.room.wall_names[0], "kind": "door", "material": "door-solid-timber",
             "left": 0.2, "bottom": 0.0, "width": 0.8, "height": 2.0,
         })  # fmt: skip
-    with st.expander(f"What covers part of a surface ({len(data['patch'])})"):
+    with section("patch", f"What covers part of a surface ({len(data['patch'])})"):
         things(
             data, "patch", "Patch", {"on": "floor", "material": "carpet-on-underlay", "area": 2.0}
         )
-    with st.expander(f"Furniture and people ({len(data['furnishing'])})"):
+    with section("furnishing", f"Furniture and people ({len(data['furnishing'])})"):
         things(data, "furnishing", "Item", {"item": "person-seated", "count": 1})
-    with st.expander(f"Where nothing may be mounted ({len(data['keep_out'])})"):
+    with section("keep_out", f"Where nothing may be mounted ({len(data['keep_out'])})"):
         things(data, "keep_out", "Keep-out", {
             "on": work.room.wall_names[0], "left": 0.1, "bottom": 0.1, "width": 0.4, "height": 0.4, "why": "",
         })  # fmt: skip
-    with st.expander("Seat and loudspeakers"):
+    with section("places", "Seat and loudspeakers"):
         places(data)
-    with st.expander("Target and air", expanded=True):
+    with section("target", "Target and air", expanded=True):
         target_and_air(data)
 
 
+def refused() -> None:
+    """Why the last change was not taken, beside the fields it is about."""
+    if work.problem is None:
+        return
+    with slots.get(place_of(work.problem), slots["sizes"]):
+        show.refusal(work.problem)
+        st.caption("The last description that holds is used until this is put right.")
+
+
+slots: dict[str, DeltaGenerator] = {}
 st.title("Room")
 form, view = st.columns([5, 6], gap="large")
 with form:
-    describe(work)
+    describe()
+before = work.problem
 work.change_room(data)
-if work.room.units != units:
-    st.rerun()  # the fields are to be shown in the other unit
+refused()
+if (work.room.units, work.room.is_rectangle) != (units, box) or (work.problem is None) != (
+    before is None
+):
+    st.rerun()  # fields are to be shown in the other unit, or a group opened for its refusal
 
 with view:
     if work.problem is not None:
-        show.refusal(work.problem)
+        st.warning("The last change is not taken: see the refusal beside its field.")
     prediction = cached.prediction(work, calibrated=False)
     series = [show.prediction_series(prediction, "Predicted", "untreated")]
     show.chart(

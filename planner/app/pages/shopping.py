@@ -41,13 +41,13 @@ st.dataframe(
             {
                 "item": line.item,
                 "where": line.where,
-                "panels": line.panels,
                 "pieces": line.pieces,
                 "packs": f"{line.packs} × {line.pack:g}" + (" m²" if line.unit == "m2" else ""),
                 "area (m²)": round(line.area_m2, 2),
                 "weight (kg)": line.weight_kg,
-                f"cost ({currency})": line.cost,
+                f"cost ({currency})": None if line.cost is None else f"{line.cost:,.2f}",
                 "spare (%)": round(line.spare_percent),
+                "panels": line.panels,
                 "price": line.price_basis,
             }
             for line in listed.lines
@@ -61,7 +61,45 @@ left.metric("Total", "–" if bought.total is None else f"{bought.total:,.2f} {c
 middle.metric("Covered", f"{bought.area_m2:.1f} m²")
 right.metric("Weight", "–" if bought.weight_kg is None else f"{bought.weight_kg:.0f} kg")
 for text in bought.warnings:
-    st.warning(show.plain(text))
+    st.warning(show.plain(text[0].upper() + text[1:]))
+if listed.raw:
+    st.header("Raw goods for what is built by hand")
+    st.dataframe(
+        pd.DataFrame(
+            [
+                {
+                    "goods": one.goods,
+                    "needed": one.need,
+                    "buy": one.buy,
+                    "left over (%)": round(100 * one.waste),
+                }
+                for one in listed.raw
+            ]
+        ),
+        hide_index=True,
+        width="stretch",
+    )
+if listed.fixings:
+    st.header("Fixings")
+    st.dataframe(
+        pd.DataFrame(
+            [
+                {
+                    "for": one.product,
+                    "goes": one.where,
+                    "panels": one.panels,
+                    "each": one.each,
+                    "in all": one.total,
+                    "kind": one.kind,
+                    "note": one.note,
+                }
+                for one in listed.fixings
+            ]
+        ),
+        hide_index=True,
+        width="stretch",
+    )
+show.notes(listed.assumptions, "What raw goods and fixings rest on")
 
 
 def written(ending: str) -> Callable[[], bytes]:
