@@ -28,6 +28,7 @@ from planner.room.surfaces import RoomSurfaces, room_library, room_surfaces
 if TYPE_CHECKING:
     from planner.measure.measured import Measured
     from planner.predict.room_modes import RoomModes
+    from planner.predict.seat import Places, Seat
     from planner.reconcile.calibration import Calibration
     from planner.reconcile.compare import Comparison
     from planner.reconcile.proof import Proof
@@ -36,6 +37,7 @@ if TYPE_CHECKING:
     from planner.treat.optimise import Task
     from planner.treat.option import Option
     from planner.treat.placement import Placement
+    from planner.treat.covers import Cover
     from planner.treat.suggestion import Suggestion
 
 POSTERIOR_DRAWS = 600
@@ -196,8 +198,38 @@ class Project:
         """Modes up to a frequency, with their decay."""
         from planner.predict.room_modes import room_modes
 
-        schroeder = predict(self.surfaces, self.air, draws=0, formula=self.formula).schroeder_hz
+        schroeder = self._schroeder(self.surfaces)
         return room_modes(self.room, self.surfaces, self.air, highest_hz, schroeder)
+
+    def seat(self, option: Option | None = None) -> Seat:
+        """Response and first reflections at the seat, treated or not."""
+        from planner.predict.seat import seat
+
+        surfaces = self.surfaces if option is None else self.after(option)
+        return seat(self.room, surfaces, self.air, self._schroeder(surfaces))
+
+    def better_places(self) -> Places:
+        """Places of loudspeakers and seat with a flatter bass."""
+        from planner.predict.seat import better_places
+
+        return better_places(self.room, self.surfaces, self.air, self._schroeder(self.surfaces))
+
+    def _schroeder(self, surfaces: RoomSurfaces) -> float:
+        return predict(surfaces, self.air, draws=0, formula=self.formula).schroeder_hz
+
+    def _covers(self) -> list[Cover]:
+        """First reflections that a treatment must cover, where the room file asks for it."""
+        from planner.predict.seat import first_reflection_areas
+        from planner.treat.covers import Cover
+
+        if not self.room.treatment.cover_first_reflections:
+            return []
+        areas = first_reflection_areas(self.room, self.seat())
+        return [
+            Cover(area.surface, area.left, area.bottom, area.width, area.height)
+            for each in areas.values()
+            for area in each
+        ]
 
     def compare(self, measured: Measured, option: Option | None = None) -> Comparison:
         """Predicted against measured, with the coefficients that explain the difference."""
@@ -236,7 +268,7 @@ class Project:
         """The panels of an option laid on their surfaces."""
         from planner.treat.placement import place
 
-        return place(self.room, option, self.catalogue)
+        return place(self.room, option, self.catalogue, covers=self._covers())
 
     def suggest(
         self,
@@ -288,6 +320,7 @@ class Project:
                 *asked.arguments,
                 area_limits=fitting.area,
                 piece_limits=fitting.pieces,
+                covers=self._covers(),
                 confidence=confidence,
                 room_draws=asked.draws,
                 time_limit=time_limit,
@@ -341,6 +374,7 @@ class Project:
             *asked.arguments,
             area_limits=fitting.area,
             piece_limits=fitting.pieces,
+            covers=self._covers(),
             room_draws=asked.draws,
             name=name,
         )

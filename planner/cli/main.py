@@ -8,7 +8,7 @@ from collections.abc import Sequence
 import typer
 
 from planner import __version__
-from planner.cli import browser, rooms, site, treatment
+from planner.cli import browser, rooms, seat, site, treatment
 from planner.cli.output import warn
 from planner.errors import PlannerError
 
@@ -16,7 +16,7 @@ app = typer.Typer(
     name="planner",
     help=(
         "Predict, measure and treat the reverberation of small rooms for listening and speech.\n\n"
-        "A room walks through the commands in this order: check, predict, modes; noise, measure, "
+        "A room walks through the commands in this order: check, predict, modes, seat; noise, measure, "
         "compare; suggest, buy, report. Start with: planner demo net-loft"
     ),
     epilog="Example: planner predict net-loft/room.toml",
@@ -26,7 +26,7 @@ app = typer.Typer(
     rich_markup_mode=None,  # plain help answers in half the time
 )
 
-for group in (rooms, site, treatment, browser):
+for group in (rooms, seat, site, treatment, browser):
     group.register(app)
 
 

@@ -66,6 +66,29 @@ def test_modes(run, demo):
     assert "is no range" in run("modes", demo, "--height", "2.5", code=2)
 
 
+def test_seat(run, demo):
+    """The floor's reflection by hand: loudspeaker and seat 1.2 m up, √(2.1² + 0.8² + 2.4²) − √(2.1² + 0.8²) = 1.04 m, 3.0 ms."""
+    content = run("seat", demo, "--search", "--json")
+    floor = next(one for one in content["reflections"] if one["surfaces"] == ["floor"])
+    assert floor["delay_ms"] == pytest.approx(3.02, abs=0.02)
+    assert content["search"]["unevenness_after_db"] <= content["search"]["unevenness_before_db"]
+    assert "dB uneven" in run("seat", demo)
+
+
+def test_first_reflections_can_be_required(run, demo, tmp_path):
+    """The suggestion then covers them: a panel lies over each area that is not kept clear."""
+    text = (demo / "room.toml").read_text(encoding="utf-8")
+    room = tmp_path / "room.toml"
+    room.write_text(
+        text.replace("wall_type =", "cover_first_reflections = true\nwall_type ="), encoding="utf-8"
+    )
+    (tmp_path / "catalogue.csv").write_bytes((demo / "catalogue.csv").read_bytes())
+    content = run("suggest", room, "--json", "-o", tmp_path / "x.toml")
+    assert content["status"] == "optimal"
+    surfaces = {item["surface"] for item in content["items"]}
+    assert {"left", "right", "ceiling", "front"} <= surfaces
+
+
 def test_noise(run, demo, tmp_path):
     content = run(
         "noise", tmp_path / "pink.flac", "--bursts", "2", "--rate", "44100", "--seed", "7", "--json"
