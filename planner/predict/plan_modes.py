@@ -15,7 +15,7 @@ from planner.predict.modes import Modes, at_frequency
 
 Array = NDArray[np.float64]
 
-ELEMENT_SIZE = 0.45
+ELEMENT_SIZE = 0.65
 """Longest edge of a cubic element at 300 Hz; inversely proportional to the frequency. [m]"""
 
 CORNER_REFINEMENTS = 4
@@ -62,7 +62,7 @@ def plan_modes(footprint: ArrayLike, highest_wavenumber: float) -> PlanModes:
 
     Notes
     -----
-    Cubic triangles of 0.45 m at 300 Hz, halved four times towards inner corners; eigenvalues about
+    Cubic triangles of 0.65 m at 300 Hz, halved four times towards inner corners; eigenvalues about
     a shift below zero, where the shifted matrix is definite and needs no pivoting.
     """
     from scipy.sparse.linalg import LinearOperator, eigsh, splu
@@ -92,7 +92,7 @@ def plan_modes(footprint: ArrayLike, highest_wavenumber: float) -> PlanModes:
             )
         start = np.sin(np.arange(1, size + 1))  # fixed, so that a room gives the same twice
         values, vectors = eigsh(
-            stiffness, min(wanted, size - 2), mass, sigma=shift, OPinv=inverse, v0=start
+            stiffness, min(wanted, size - 2), mass, sigma=shift, OPinv=inverse, v0=start, tol=1e-7
         )
         if values.max() > highest_wavenumber**2 or wanted >= size - 2:
             break
