@@ -34,10 +34,10 @@ if TYPE_CHECKING:
     from planner.reconcile.proof import Proof
     from planner.treat.alternatives import FrontPoint
     from planner.treat.catalogue import Catalogue
+    from planner.treat.covers import Cover
     from planner.treat.optimise import Task
     from planner.treat.option import Option
     from planner.treat.placement import Placement
-    from planner.treat.covers import Cover
     from planner.treat.suggestion import Suggestion
 
 POSTERIOR_DRAWS = 600

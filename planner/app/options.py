@@ -172,6 +172,7 @@ def _table(work: Work, option: Option) -> Option | None:
     table = edited(
         option_rows(option, catalogue),
         key=key,
+        column_order=["product", "surface", "pieces", "area", "what"],
         column_config={
             "product": st.column_config.SelectboxColumn(
                 "Product", options=list(catalogue), required=True

@@ -49,11 +49,15 @@ def browser():
         found.close()
 
 
-def serve(folder):
-    """The app on a free port of this computer, and its address."""
+def free_port():
     with socket.socket() as probe:
         probe.bind(("127.0.0.1", 0))
-        port = probe.getsockname()[1]
+        return probe.getsockname()[1]
+
+
+def serve(folder):
+    """The app on a free port of this computer, and its address."""
+    port = free_port()
     words = [sys.executable, "-m", "planner", "app", "--port", str(port), "--no-browser"]
     process = subprocess.Popen(
         [*words, str(folder)],

@@ -226,6 +226,8 @@ def results() -> None:
     if measured.state:
         facts.append(f"room {measured.state}")
     st.caption(" · ".join(facts))
+    for words in doubts(measured):
+        st.markdown(f"- {show.plain(words)}")
     show.notes(
         [
             *measured.warnings,
@@ -237,6 +239,15 @@ def results() -> None:
         decays()
     elif present:
         st.caption("Evaluate the recordings once more to look at their decays.")
+
+
+def doubts(measured: Any) -> list[str]:
+    """Each doubt once, with the bands it is about and its cure."""
+    bands: dict[str, list[str]] = {}
+    for hz, flags in zip(measured.bands_hz, measured.flags, strict=True):
+        for flag in flags:
+            bands.setdefault(flag, []).append(f"{hz:g}")
+    return [f"{', '.join(at)} Hz: {survey.flag_in_words(flag)}." for flag, at in bands.items()]
 
 
 def table(measured: Any) -> Any:
@@ -256,7 +267,6 @@ def table(measured: Any) -> Any:
                 "T30 (s)": shown(measured.t30_s[n]),
                 "EDT (s)": shown(measured.edt_s[n]),
                 "range (dB)": shown(measured.range_db[n], 0),
-                "doubts": "; ".join(map(survey.flag_in_words, measured.flags[n])),
             }
             for n, hz in enumerate(measured.bands_hz)
         ]

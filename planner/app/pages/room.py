@@ -290,10 +290,12 @@ SECTIONS = {
 
 
 def section(name: str, title: str, *, expanded: bool = False) -> DeltaGenerator:
-    """A group of fields, open where its last change was refused, with a place for the refusal."""
+    """A group of fields; open, with the reason on top, where its last change was refused."""
     refused = work.problem is not None and place_of(work.problem) == name
     box = st.expander(title, expanded=expanded or refused)
-    slots[name] = box.container()
+    if refused:
+        with box:
+            refusal()
     return box
 
 
@@ -303,57 +305,69 @@ def place_of(problem: PlannerError) -> str:
     return SECTIONS.get(words[0], "sizes") if words else "surfaces"
 
 
-def describe() -> None:
-    """All fields, group by group."""
-    with st.container(border=True):
-        slots["sizes"] = st.container()
-        sizes(data)
-    with section("surfaces", "Surfaces", expanded=True):
-        surfaces(data)
-    with section("opening", f"Doors and windows ({len(data['opening'])})"):
-        things(data, "opening", "Opening", {
-            "wall": work.room.wall_names[0], "kind": "door", "material": "door-solid-timber",
-            "left": 0.2, "bottom": 0.0, "width": 0.8, "height": 2.0,
-        })  # fmt: skip
-    with section("patch", f"What covers part of a surface ({len(data['patch'])})"):
-        things(
-            data, "patch", "Patch", {"on": "floor", "material": "carpet-on-underlay", "area": 2.0}
-        )
-    with section("furnishing", f"Furniture and people ({len(data['furnishing'])})"):
-        things(data, "furnishing", "Item", {"item": "person-seated", "count": 1})
-    with section("keep_out", f"Where nothing may be mounted ({len(data['keep_out'])})"):
-        things(data, "keep_out", "Keep-out", {
-            "on": work.room.wall_names[0], "left": 0.1, "bottom": 0.1, "width": 0.4, "height": 0.4, "why": "",
-        })  # fmt: skip
-    with section("places", "Seat and loudspeakers"):
-        places(data)
-    with section("target", "Target and air", expanded=True):
-        target_and_air(data)
-
-
-def refused() -> None:
-    """Why the last change was not taken, beside the fields it is about."""
-    if work.problem is None:
-        return
-    with slots.get(place_of(work.problem), slots["sizes"]):
+def refusal() -> None:
+    """Why the last change was not taken."""
+    if work.problem is not None:
         show.refusal(work.problem)
         st.caption("The last description that holds is used until this is put right.")
 
 
-slots: dict[str, DeltaGenerator] = {}
-st.title("Room")
-form, view = st.columns([5, 6], gap="large")
-with form:
-    describe()
-before = work.problem
-work.change_room(data)
-refused()
-if (work.room.units, work.room.is_rectangle) != (units, box) or (work.problem is None) != (
-    before is None
-):
-    st.rerun()  # fields are to be shown in the other unit, or a group opened for its refusal
+def details() -> None:
+    """Everything but the sizes, group by group."""
+    left, right = st.columns(2, gap="large")
+    with left:
+        with section("surfaces", "Surfaces", expanded=True):
+            surfaces(data)
+        with section("opening", f"Doors and windows ({len(data['opening'])})"):
+            things(data, "opening", "Opening", {
+                "wall": work.room.wall_names[0], "kind": "door", "material": "door-solid-timber",
+                "left": 0.2, "bottom": 0.0, "width": 0.8, "height": 2.0,
+            })  # fmt: skip
+        with section("patch", f"What covers part of a surface ({len(data['patch'])})"):
+            things(data, "patch", "Patch", {
+                "on": "floor", "material": "carpet-on-underlay", "area": 2.0,
+            })  # fmt: skip
+    with right:
+        with section("target", "Target and air", expanded=True):
+            target_and_air(data)
+        with section("furnishing", f"Furniture and people ({len(data['furnishing'])})"):
+            things(data, "furnishing", "Item", {"item": "person-seated", "count": 1})
+        with section("keep_out", f"Where nothing may be mounted ({len(data['keep_out'])})"):
+            things(data, "keep_out", "Keep-out", {
+                "on": work.room.wall_names[0], "left": 0.1, "bottom": 0.1, "width": 0.4,
+                "height": 0.4, "why": "",
+            })  # fmt: skip
+        with section("places", "Seat and loudspeakers"):
+            places(data)
 
-with view:
+
+@st.fragment
+def sketch() -> None:
+    """Sizes with what they do beside them; a changed size draws this part alone again."""
+    left, right = st.columns([5, 6], gap="large")
+    with left, st.container(border=True):
+        if work.problem is not None and place_of(work.problem) == "sizes":
+            refusal()
+        sizes(data)
+    before, conflict, name = str(work.problem), work.conflict, work.room.name
+    work.change_room(data)
+    now = (
+        str(work.problem),
+        work.conflict,
+        work.room.name,
+        work.room.units,
+        work.room.is_rectangle,
+    )
+    if now != (before, conflict, name, units, box):
+        st.rerun()  # the rest of the page is to show it too
+    with left:
+        drawings()
+    with right:
+        effect()
+
+
+def effect() -> None:
+    """What the room sounds like."""
     if work.problem is not None:
         st.warning("The last change is not taken: see the refusal beside its field.")
     prediction = cached.prediction(work, calibrated=False)
@@ -367,10 +381,21 @@ with view:
         f"Volume {geometry.volume:.1f} m³ · surface {geometry.surface_area:.1f} m² · Schroeder "
         f"frequency {prediction.schroeder_hz:.0f} Hz"
     )
+    show.notes([*work.project.warnings, *prediction.warnings])
+
+
+def drawings() -> None:
+    """Plan, ceiling or a wall, to scale."""
     names = ["plan", "ceiling", *work.room.wall_names]
     which = st.segmented_control("View", names, default="plan", key=key("view")) or "plan"
     show.drawing(
         on_screen(work.room, which, (), units=work.room.units, theme=show.theme()),
-        f"{which} of {work.room.name}, to scale",
+        f"{which.capitalize()} of {work.room.name}, to scale",
     )
-    show.notes([*work.project.warnings, *prediction.warnings])
+
+
+st.title("Room")
+above = st.container()
+details()
+with above:
+    sketch()
