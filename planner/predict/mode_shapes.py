@@ -69,16 +69,16 @@ def plan_pressure(
         along = np.cos(first * np.pi * (x - low[0]) / size[0])
         across = np.cos(second * np.pi * (y - low[1]) / size[1])
         return PlanPressure(x, y, across[:, None] * along)
-    from scipy.interpolate import LinearNDInterpolator
-
     from planner.predict.plan_modes import plan_modes
 
     plan = plan_modes(corners, 2.0 * np.pi * highest_hz / speed_of_sound)
-    if not 0 <= first < len(plan.shapes):
+    if not 0 <= first < len(plan.wavenumber):
         raise RoomError(f"the plan has no mode {first} up to {highest_hz:g} Hz")
     grid = np.stack(np.meshgrid(x, y), axis=-1)
-    pressure = LinearNDInterpolator(plan.points, plan.shapes[first])(grid)
-    return PlanPressure(x, y, np.where(_inside(grid, corners), pressure, np.nan))
+    inside = _inside(grid, corners)
+    pressure = np.full(inside.shape, np.nan)
+    pressure[inside] = plan.pressure(grid[inside])[first]
+    return PlanPressure(x, y, pressure)
 
 
 def _inside(points: Array, corners: Array) -> NDArray[np.bool_]:

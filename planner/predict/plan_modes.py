@@ -23,6 +23,8 @@ CORNER_REFINEMENTS = 4
 
 MOST_PLAN_MODES = 1500
 
+POINTS_AT_ONCE = 500
+
 
 @dataclass(frozen=True, slots=True)
 class PlanModes:
@@ -32,12 +34,39 @@ class PlanModes:
     """Shape ``(mode,)``. [1/m]"""
     wall_pressure: Array
     """Mean square pressure on each wall against that of the plan, shape ``(mode, wall)``. [-]"""
-    points: Array
-    """Where the shapes are given, shape ``(point, 2)``. [m]"""
-    triangles: NDArray[np.intp]
-    """Of the points, shape ``(triangle, 3)``."""
-    shapes: Array
-    """Pressure of each mode there, largest magnitude 1, shape ``(mode, point)``. [-]"""
+    basis: Any
+    """Of the finite elements."""
+    vectors: Array
+    """Pressure of each mode at the basis's nodes, largest magnitude 1, shape ``(node, mode)``. [-]"""
+
+    def pressure(self, points: ArrayLike) -> Array:
+        """Pressure of every mode at points inside the footprint, shape ``(mode, point)``. [-].
+
+        Parameters
+        ----------
+        points
+            Shape ``(point, 2)``; those outside the footprint by rounding are read at its edge. [m]
+        """
+        return np.concatenate(
+            [self._at(some) for some in _in_lots(np.asarray(points, float), POINTS_AT_ONCE)], axis=1
+        )
+
+    def _at(self, points: Array) -> Array:
+        basis, mapping = self.basis, self.basis.mapping
+        # Every triangle is asked, and the one that holds a point best is taken: a point on an edge
+        # or, by rounding, outside is found as surely as any other.
+        local = mapping.invF(points.T[:, None, :].repeat(basis.mesh.t.shape[1], axis=1))
+        cells = np.minimum(local.min(axis=0), 1.0 - local.sum(axis=0)).argmax(axis=0)
+        own = mapping.invF(points.T[:, :, None], tind=cells)
+        found = np.zeros((self.vectors.shape[1], len(points)))
+        for number, nodes in enumerate(basis.element_dofs):
+            weight = np.asarray(basis.elem.gbasis(mapping, own, number, tind=cells)[0])[:, 0]
+            found += weight * self.vectors[nodes[cells]].T
+        return found
+
+
+def _in_lots(points: Array, count: int) -> list[Array]:
+    return np.array_split(points, max(1, -(-len(points) // count)))
 
 
 def plan_modes(footprint: ArrayLike, highest_wavenumber: float) -> PlanModes:
@@ -105,9 +134,8 @@ def plan_modes(footprint: ArrayLike, highest_wavenumber: float) -> PlanModes:
     return PlanModes(
         wavenumber=np.sqrt(values),
         wall_pressure=_wall_pressure(mesh, basis, mass, vectors, corners),
-        points=np.asarray(mesh.p.T, float),
-        triangles=np.asarray(mesh.t.T, np.intp),
-        shapes=_shapes(basis, vectors),
+        basis=basis,
+        vectors=vectors / np.abs(vectors).max(axis=0),
     )
 
 
@@ -239,11 +267,3 @@ def _wall_pressure(mesh: Any, basis: Any, mass: Any, vectors: Array, corners: Ar
         length = float(np.hypot(*(end - start)))
         found[:, wall] = np.einsum("im,im->m", vectors, wall_mass @ vectors) / length / square
     return found
-
-
-def _shapes(basis: Any, vectors: Array) -> Array:
-    """Values at the mesh's corners, largest magnitude one."""
-    values = vectors[basis.nodal_dofs[0]].T
-    largest = np.abs(values).max(axis=1, keepdims=True)
-    shapes: Array = values / np.where(largest > 0, largest, 1.0)
-    return shapes
