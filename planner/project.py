@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.absorption.library import Library
-from planner.air import Air
+from planner.air import Air, speed_of_sound
 from planner.errors import OptionError, PlannerError, RoomError
 from planner.predict.prediction import Prediction, predict
 from planner.predict.targets import TargetLimits, target_of
@@ -265,10 +265,40 @@ class Project:
         )
 
     def place(self, option: Option) -> Placement:
-        """The panels of an option laid on their surfaces."""
+        """The panels of an option laid on their surfaces.
+
+        Over first reflections first where the room file asks for it, and bass panels where the
+        modes of the 63 and 125 Hz octaves press.
+        """
         from planner.treat.placement import place
 
-        return place(self.room, option, self.catalogue, covers=self._covers())
+        return place(
+            self.room,
+            option,
+            self.catalogue,
+            covers=self._covers(),
+            pressure=self._bass_pressure,
+        )
+
+    @cached_property
+    def _bass_pressure(self) -> dict[str, NDArray[np.float64]]:
+        """Where on each surface the modes below 177 Hz and the Schroeder frequency press. [-].
+
+        Above the Schroeder frequency so many modes overlap that no place is better than another.
+        """
+        from planner.bands import band_edges
+        from planner.predict.mode_field import mode_field, wall_pressure
+
+        low, high = band_edges((63, 125))
+        highest = min(float(high[-1]), self._schroeder(self.surfaces))
+        if highest <= low[0]:
+            return {}
+        speed = float(speed_of_sound(self.air.temperature_c))
+        field = mode_field(self.room, self.surfaces, speed, highest)
+        return {
+            name: wall_pressure(field, frame, float(low[0]), highest)
+            for name, frame in self.geometry.frames.items()
+        }
 
     def suggest(
         self,

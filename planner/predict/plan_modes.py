@@ -34,6 +34,8 @@ class PlanModes:
     """Shape ``(mode,)``. [1/m]"""
     wall_pressure: Array
     """Mean square pressure on each wall against that of the plan, shape ``(mode, wall)``. [-]"""
+    mean_square: Array
+    """Of each mode's pressure over the plan, shape ``(mode,)``. [-]"""
     basis: Any
     """Of the finite elements."""
     vectors: Array
@@ -131,11 +133,14 @@ def plan_modes(footprint: ArrayLike, highest_wavenumber: float) -> PlanModes:
     kept = values <= highest_wavenumber**2
     values, vectors = values[kept], vectors[:, kept]
     values[0] = 0.0
+    vectors = vectors / np.abs(vectors).max(axis=0)
+    area = float(np.asarray(mass.sum()))
     return PlanModes(
         wavenumber=np.sqrt(values),
         wall_pressure=_wall_pressure(mesh, basis, mass, vectors, corners),
+        mean_square=np.einsum("im,im->m", vectors, mass @ vectors) / area,
         basis=basis,
-        vectors=vectors / np.abs(vectors).max(axis=0),
+        vectors=vectors,
     )
 
 
@@ -148,6 +153,7 @@ def extruded_modes(
     *,
     speed_of_sound: float = 343.0,
     further_area: ArrayLike = 0.0,
+    plan: PlanModes | None = None,
 ) -> Modes:
     """Modes of a room of any footprint and one height, with their decay.
 
@@ -163,6 +169,8 @@ def extruded_modes(
         In the order of the footprint's edges.
     further_area
         Absorption area of furnishings, shape ``(band,)``. [m²]
+    plan
+        Of `plan_modes` up to the same frequency, where it is known already.
 
     Returns
     -------
@@ -171,7 +179,8 @@ def extruded_modes(
         weighs each wall by the mode's pressure on it, as `planner.predict.modes.mode_decay`.
     """
     corners = np.asarray(footprint, float)
-    plan = plan_modes(corners, 2.0 * np.pi * highest_hz / speed_of_sound)
+    if plan is None:
+        plan = plan_modes(corners, 2.0 * np.pi * highest_hz / speed_of_sound)
     area = 0.5 * float(
         np.sum(
             corners[:, 0] * np.roll(corners[:, 1], -1) - np.roll(corners[:, 0], -1) * corners[:, 1]

@@ -11,7 +11,8 @@ from numpy.typing import NDArray
 
 from planner.air import Air, speed_of_sound
 from planner.errors import RoomError
-from planner.predict.modes import Modes, kind_of, mode_decay, rectangular_modes
+from planner.predict.mode_field import ModeField, mode_field
+from planner.predict.modes import Modes
 from planner.predict.reflections import Area, Reflection, reflections, serving_area
 from planner.predict.response import (
     MODES_TO,
@@ -32,8 +33,8 @@ from planner.room.surfaces import RoomSurfaces
 
 Array = NDArray[np.float64]
 
-LONGEST_T = 3.0
-"""Decay time that the constant pressure mode is given. [s]"""
+FOOTPRINT_HZ = 300.0
+"""Responses of rooms that are no rectangles end here: their modes above take minutes. [Hz]"""
 
 SEARCH_STEP = 0.1
 """Of loudspeakers and seat in a search. [m]"""
@@ -185,17 +186,19 @@ def seat(room: Room, surfaces: RoomSurfaces, air: Air, schroeder_hz: float) -> S
                 area = serving_area(frames[one.surfaces[0]], source, place)
                 if area is not None:
                     areas.append(area)
-    responses: tuple[SeatResponse, ...] = ()
-    modes = Modes(np.zeros(0), np.zeros((0, 3), np.intp), (), np.zeros(0))
     notes: list[str] = []
-    if room.is_rectangle:
-        responses, modes = _responses(room, surfaces, speed, 2.0 * schroeder_hz)
+    highest = 2.0 * schroeder_hz
+    if not room.is_rectangle and highest > FOOTPRINT_HZ:
+        highest = FOOTPRINT_HZ
         notes.append(
-            "The response adds up modes of rigid walls with their damping: it shows where peaks and "
-            "dips lie better than how high they are."
+            f"The response ends at {highest:.0f} Hz: modes of a room that is no rectangle are found up "
+            "to there."
         )
-    else:
-        notes.append("The response is worked out for rectangular rooms only.")
+    responses, modes = _responses(room, surfaces, speed, highest)
+    notes.append(
+        "The response adds up modes of rigid walls with their damping: it shows where peaks and "
+        "dips lie better than how high they are."
+    )
     strong = [one for _, one in found if one.is_early_and_strong]
     if strong:
         worst = max(strong, key=lambda one: one.judged_db)
@@ -215,49 +218,32 @@ def seat(room: Room, surfaces: RoomSurfaces, air: Air, schroeder_hz: float) -> S
 
 def _bass(
     room: Room, surfaces: RoomSurfaces, speed: float, highest_hz: float
-) -> tuple[Array, Modes, NDArray[np.complex128]]:
-    """Frequencies, modes with the constant one first, and their kernel."""
+) -> tuple[Array, ModeField, NDArray[np.complex128]]:
+    """Frequencies, modes, and their kernel."""
     hz = frequencies(highest_hz)
-    mode_hz, orders = rectangular_modes(
-        room.dimensions, MODES_TO * highest_hz, speed_of_sound=speed
-    )
-    decay = mode_decay(
-        mode_hz,
-        orders,
-        room.dimensions,
-        wall_alpha(surfaces),
-        speed_of_sound=speed,
-        further_area=surfaces.item_count @ surfaces.item_area,
-    )
-    decay = np.minimum(decay, LONGEST_T * 10)
-    modes = Modes(
-        np.concatenate([[0.0], mode_hz]),
-        np.concatenate([np.zeros((1, 3), np.intp), orders]),
-        ("constant", *kind_of(orders)),
-        np.concatenate([[LONGEST_T], decay]),
-    )
-    answer = kernel(hz, modes.hz, modes.t_s, surfaces.volume, speed_of_sound=speed)
-    return hz, modes, answer
+    field = mode_field(room, surfaces, speed, MODES_TO * highest_hz)
+    modes = field.modes
+    return hz, field, kernel(hz, modes.hz, modes.t_s, surfaces.volume, speed_of_sound=speed)
 
 
 def _responses(
     room: Room, surfaces: RoomSurfaces, speed: float, highest_hz: float
 ) -> tuple[tuple[SeatResponse, ...], Modes]:
-    hz, modes, answer = _bass(room, surfaces, speed, highest_hz)
+    hz, field, answer = _bass(room, surfaces, speed, highest_hz)
     frames = geometry(room).frames
     place = room.positions.seat
     assert place is not None
-    at_seat = shape_at(place, modes.orders, room.dimensions)
+    at_seat = field.shape_at(place)
     found = []
     together = np.zeros_like(answer)
     for number, source in enumerate(room.positions.loudspeakers, 1):
-        parts = answer * at_seat * shape_at(source, modes.orders, room.dimensions)
+        parts = answer * at_seat * field.shape_at(source)
         together = together + parts
         interference = boundary_interference(frames, source, place, speed_of_sound=speed)
         found.append(_one(f"loudspeaker {number}", hz, parts, tuple(interference)))
     if len(found) > 1:
         found.append(_one("together", hz, together, ()))
-    return tuple(found), modes
+    return tuple(found), field.modes
 
 
 def _one(
@@ -303,15 +289,15 @@ def better_places(
         )
     speed = float(speed_of_sound(air.temperature_c))
     # Above the Schroeder frequency places matter less, and the modes there cost the most.
-    hz, modes, answer = _bass(room, surfaces, speed, max(schroeder_hz, 120.0))
+    hz, field, answer = _bass(room, surfaces, speed, max(schroeder_hz, 120.0))
     length, width, _ = room.dimensions
     grid = _grid(spots.seat, spots.loudspeakers, length, width, reach, most)
     speakers, seats = grid
-    curves = pair_levels(answer, modes.orders, room.dimensions, speakers, seats, width)
+    curves = pair_levels(answer, field.modes.orders, room.dimensions, speakers, seats, width)
     spread = unevenness(curves, hz)
     best = int(np.argmin(spread))
-    pair = shape_at(np.array(spots.loudspeakers, float), modes.orders, room.dimensions)
-    present = pair.sum(axis=0) * shape_at(spots.seat, modes.orders, room.dimensions)
+    pair = field.shape_at(spots.loudspeakers)
+    present = pair.sum(axis=0) * field.shape_at(spots.seat)
     before = float(unevenness(level(answer @ present), hz))
     x, y, z = (float(v) for v in speakers[best])
     place = seats[best]
