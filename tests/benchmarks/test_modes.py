@@ -38,6 +38,8 @@ def fastest(action):
         began = time.perf_counter()
         action()
         spent.append(time.perf_counter() - began)
+        if spent[-1] > 2.0:
+            break
     return min(spent)
 
 
