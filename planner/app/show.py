@@ -49,8 +49,12 @@ def chart(picture: Chart, *, key: str, table: bool = True, to_scale: bool = Fals
     st.vega_lite_chart(spec, width="content" if to_scale else "stretch", theme=None, key=key)
     st.caption(plain(picture.description))
     if table:
-        with st.expander(f"Numbers: {plain(picture.title)}"):
-            st.dataframe(picture.table(), hide_index=True, width="stretch", key=f"{key}-table")
+        # Filled once it is opened: a table costs the browser more than the chart.
+        numbers = st.expander(
+            f"Numbers: {plain(picture.title)}", key=f"{key}-numbers", on_change="rerun"
+        )
+        if numbers.open:
+            numbers.dataframe(picture.table(), hide_index=True, width="stretch", key=f"{key}-table")
 
 
 def drawing(svg: str, words: str) -> None:

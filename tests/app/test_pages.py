@@ -317,9 +317,25 @@ def test_a_zip_that_wants_out_is_refused_and_an_honest_one_opened(start, project
     assert app.session_state["work"].room.name == "Control room in the old net loft"
 
 
+def opened(app, group):
+    """A closed group of fields is opened, as by a click."""
+    app.session_state[f"room-1-m-box-{group}"] = True
+    app.run()
+    assert not app.exception
+
+
+def test_a_length_that_pushes_a_window_out_opens_its_group(start, project):
+    app = start()
+    field(app, "Length (m)").set_value("2.9").run()
+    group = next(box for box in app.expander if box.label.startswith("Doors"))
+    assert any("leaves the surface" in error.value for error in group.error)
+    assert "length = 5.2" in (project / "room.toml").read_text(encoding="utf-8")
+
+
 def test_a_door_that_leaves_its_wall_is_refused_beside_its_fields(start, project):
     app = start()
     before = (project / "room.toml").read_text(encoding="utf-8")
+    opened(app, "section-opening")
     group = next(box for box in app.expander if box.label.startswith("Doors"))
     group.text_input[0].set_value("40").run()
     group = next(box for box in app.expander if box.label.startswith("Doors"))
@@ -348,6 +364,20 @@ def test_corners_are_added_one_after_the_other(start, project):
     assert saved(project / "room.toml")["shape"]["footprint"] == expected
     edit(app, "room-", {"edited_rows": {2: {"y": float("nan")}}, "deleted_rows": [1]})
     assert any("corners" in error.value for error in app.error)
+
+
+def test_walls_of_their_own_materials_stay_so_with_corners(start, project):
+    app = start()
+    next(box for box in app.checkbox if box.label == "All walls alike").set_value(False).run()
+    wall = next(one for one in app.selectbox if one.label == "Wall back")
+    wall.set_value("door-solid-timber").run()
+    assert saved(project / "room.toml")["surfaces"]["walls"]["back"] == "door-solid-timber"
+    next(one for one in app.radio if one.label == "Plan").set_value("corners").run()
+    assert not app.error
+    walls = saved(project / "room.toml")["surfaces"]["walls"]
+    assert [name == "door-solid-timber" for name in walls] == [False, True, False, False]
+    edit(app, "room-", {"added_rows": [{"x": 0.0, "y": 2.0}]})
+    assert len(saved(project / "room.toml")["surfaces"]["walls"]) == 5
 
 
 def test_a_mode_is_shown_in_plan(start):

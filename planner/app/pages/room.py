@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Any
 
 import streamlit as st
-from streamlit.delta_generator import DeltaGenerator
 
 from planner.absorption.library import builtin
 from planner.app import cached, show
@@ -111,19 +111,27 @@ def surfaces(data: dict[str, Any]) -> None:
         found["walls"] = choose("Walls", chosen[walls[0]], options, "m-walls")
     else:
         each = [choose(f"Wall {name}", chosen[name], options, f"m-{name}") for name in walls]
-        footprint = data["shape"]["footprint"]
-        # A new corner makes a new wall: it begins as the one before it.
-        names = RECTANGLE_WALLS if footprint is None else range(len(footprint))
-        each += each[-1:] * (len(names) - len(each))
-        each = each[: len(names)]
-        found["walls"] = (
-            dict(zip(RECTANGLE_WALLS, each, strict=True)) if footprint is None else each
-        )
+        found["walls"] = dict(zip(walls, each, strict=True)) if work.room.is_rectangle else each
     data["surfaces"] = found
     with st.expander("Their coefficients"):
         rows = work.project.surfaces
         st.dataframe(_coefficients(rows), hide_index=True, width="stretch")
         st.caption("From tables; an asterisk marks what no source gives and the planner assumes.")
+
+
+def fit_walls(data: dict[str, Any]) -> None:
+    """Materials of single walls, for as many walls as the plan now has."""
+    walls = data["surfaces"]["walls"]
+    if isinstance(walls, str):
+        return
+    each = [walls[name] for name in RECTANGLE_WALLS] if isinstance(walls, dict) else list(walls)
+    footprint = data["shape"]["footprint"]
+    count = len(RECTANGLE_WALLS) if footprint is None else len(footprint)
+    # A new corner makes a new wall: it begins as the one before it.
+    each = [*each, *each[-1:] * (count - len(each))][:count]
+    data["surfaces"]["walls"] = (
+        dict(zip(RECTANGLE_WALLS, each, strict=True)) if footprint is None else each
+    )
 
 
 def _coefficients(rows: Any) -> Any:
@@ -289,14 +297,20 @@ SECTIONS = {
 """Where the fields stand that a part of the room file belongs to."""
 
 
-def section(name: str, title: str, *, expanded: bool = False) -> DeltaGenerator:
-    """A group of fields; open, with the reason on top, where its last change was refused."""
+def section(name: str, title: str, fill: Callable[[], None], *, expanded: bool = False) -> None:
+    """A group of fields; open, with the reason on top, where its last change was refused.
+
+    Fields of a closed group are not drawn: what is not looked at would slow down every change.
+    """
     refused = work.problem is not None and place_of(work.problem) == name
-    box = st.expander(title, expanded=expanded or refused)
     if refused:
+        st.session_state[key(f"section-{name}")] = True
+    box = st.expander(title, expanded=expanded, key=key(f"section-{name}"), on_change="rerun")
+    if box.open:
         with box:
-            refusal()
-    return box
+            if refused:
+                refusal()
+            fill()
 
 
 def place_of(problem: PlannerError) -> str:
@@ -314,31 +328,29 @@ def refusal() -> None:
 
 def details() -> None:
     """Everything but the sizes, group by group."""
+    door = {
+        "wall": work.room.wall_names[0], "kind": "door", "material": "door-solid-timber",
+        "left": 0.2, "bottom": 0.0, "width": 0.8, "height": 2.0,
+    }  # fmt: skip
+    carpet = {"on": "floor", "material": "carpet-on-underlay", "area": 2.0}
+    person = {"item": "person-seated", "count": 1}
+    free = {
+        "on": work.room.wall_names[0], "left": 0.1, "bottom": 0.1, "width": 0.4, "height": 0.4, "why": "",
+    }  # fmt: skip
+
+    def listed(name: str, title: str, single: str, blank: dict[str, Any]) -> None:
+        section(name, f"{title} ({len(data[name])})", lambda: things(data, name, single, blank))
+
     left, right = st.columns(2, gap="large")
     with left:
-        with section("surfaces", "Surfaces", expanded=True):
-            surfaces(data)
-        with section("opening", f"Doors and windows ({len(data['opening'])})"):
-            things(data, "opening", "Opening", {
-                "wall": work.room.wall_names[0], "kind": "door", "material": "door-solid-timber",
-                "left": 0.2, "bottom": 0.0, "width": 0.8, "height": 2.0,
-            })  # fmt: skip
-        with section("patch", f"What covers part of a surface ({len(data['patch'])})"):
-            things(data, "patch", "Patch", {
-                "on": "floor", "material": "carpet-on-underlay", "area": 2.0,
-            })  # fmt: skip
+        section("surfaces", "Surfaces", lambda: surfaces(data), expanded=True)
+        listed("opening", "Doors and windows", "Opening", door)
+        listed("patch", "What covers part of a surface", "Patch", carpet)
     with right:
-        with section("target", "Target and air", expanded=True):
-            target_and_air(data)
-        with section("furnishing", f"Furniture and people ({len(data['furnishing'])})"):
-            things(data, "furnishing", "Item", {"item": "person-seated", "count": 1})
-        with section("keep_out", f"Where nothing may be mounted ({len(data['keep_out'])})"):
-            things(data, "keep_out", "Keep-out", {
-                "on": work.room.wall_names[0], "left": 0.1, "bottom": 0.1, "width": 0.4,
-                "height": 0.4, "why": "",
-            })  # fmt: skip
-        with section("places", "Seat and loudspeakers"):
-            places(data)
+        section("target", "Target and air", lambda: target_and_air(data), expanded=True)
+        listed("furnishing", "Furniture and people", "Item", person)
+        listed("keep_out", "Where nothing may be mounted", "Keep-out", free)
+        section("places", "Seat and loudspeakers", lambda: places(data))
 
 
 @st.fragment
@@ -349,6 +361,7 @@ def sketch() -> None:
         if work.problem is not None and place_of(work.problem) == "sizes":
             refusal()
         sizes(data)
+        fit_walls(data)
     before, conflict, name = str(work.problem), work.conflict, work.room.name
     work.change_room(data)
     now = (
