@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from planner.predict.mode_shapes import PlanPressure
     from planner.predict.prediction import Prediction
     from planner.predict.room_modes import RoomModes
+    from planner.predict.seat import Seat
     from planner.reconcile.compare import Comparison
     from planner.report.report_data import Alternative
     from planner.treat.option import Option
@@ -45,6 +46,11 @@ def modes(work: Work, highest_hz: float) -> RoomModes:
 def mode_plan(work: Work, highest_hz: float, number: int) -> PlanPressure:
     """Pressure of one mode over the plan."""
     return _mode_plan(room_to_toml(work.room), highest_hz, number)
+
+
+def seat(work: Work) -> Seat:
+    """Bass and first reflections at the seat."""
+    return _seat(room_to_toml(work.room))
 
 
 def comparison(work: Work) -> Comparison:
@@ -97,6 +103,11 @@ def _alternative(room: str, option: str, measured: str, folder: str, digest: str
 @st.cache_data(max_entries=16, show_spinner="Finding the modes …")
 def _modes(room: str, highest_hz: float) -> RoomModes:
     return Project(parse_room(room), Path()).modes(highest_hz)
+
+
+@st.cache_data(max_entries=8, show_spinner="Adding up the bass at the seat …")
+def _seat(room: str) -> Seat:
+    return Project(parse_room(room), Path()).seat()
 
 
 @st.cache_data(max_entries=32, show_spinner=False)

@@ -387,3 +387,11 @@ def test_a_mode_is_shown_in_plan(start):
     mode.set_value(2).run()
     assert not app.exception
     assert any("largest where the plan is darkest" in one.value for one in app.caption)
+
+
+def test_the_seat_is_shown_when_it_is_asked_for(start):
+    app = start("prediction.py")
+    assert not any("dB uneven" in one.value for one in app.markdown)
+    app.toggle[0].set_value(True).run(timeout=120)
+    assert not app.exception
+    assert any("dB uneven" in one.value for one in app.markdown)

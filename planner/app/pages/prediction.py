@@ -140,3 +140,46 @@ if found is not None:
     with right:
         plan_of_mode(found)
     show.notes(found.warnings, "About the modes")
+
+
+def at_the_seat() -> None:
+    """Response in the bass, and what reaches the ear right after the direct sound."""
+    found = show.guarded(lambda: cached.seat(work))
+    if found is None:
+        return
+    shown = found.responses[-3:]
+    show.chart(
+        charts.response(
+            shown[0].hz,
+            [(one.name, one.level_db) for one in shown],
+            title="Bass at the seat",
+            reference="the free field at one metre",
+        ),
+        key="seat-response",
+    )
+    for one in shown:
+        st.markdown(f"- {show.plain(one.name.capitalize())}: {one.unevenness_db:.1f} dB uneven.")
+    rows = [
+        {
+            "loudspeaker": name.removeprefix("loudspeaker "),
+            "by": ", ".join(one.surfaces),
+            "later by (ms)": f"{1000 * one.delay:.1f}",
+            "level, 1–8 kHz (dB)": f"{one.judged_db:.1f}".replace("-", "−"),
+            "verdict": "too strong" if one.is_early_and_strong else "weak or late enough",
+        }
+        for name, one in found.reflections
+        if one.order == 1
+    ]
+    st.subheader("First reflections")
+    st.dataframe(pd.DataFrame(rows), hide_index=True, width="stretch")
+    st.caption(
+        "Against the direct sound: 10 dB down within 15 ms is wanted (ITU-R BS.1116, from memory)."
+    )
+    show.notes(found.warnings, "About the seat")
+
+
+st.header("At the seat")
+if work.room.positions.seat is None or not work.room.positions.loudspeakers:
+    st.info("Give a seat and loudspeakers on the page Room to see the bass there.")
+elif st.toggle("Show the bass and the first reflections at the seat", key=f"seat-{work.serial}"):
+    at_the_seat()
