@@ -6,6 +6,7 @@ and `planner.treat`. Nothing here prints or draws; `planner.handover` makes pape
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import cached_property
 from pathlib import Path
@@ -178,19 +179,35 @@ class Project:
         measured: Measured | None = None,
         *,
         simulate: bool = False,
+        progress: Callable[[float, float], None] | None = None,
     ) -> Prediction:
-        """Reverberation times of the room, treated or not, calibrated or not, and simulated."""
+        """Reverberation times of the room, treated or not, calibrated or not, and simulated.
+
+        `progress` is told the share of the simulation that is done, and the seconds it still needs.
+        """
         surfaces = self.before(measured) if option is None else self.after(option, measured)
         prediction = predict(surfaces, self.air, self.target, formula=self.formula)
         if simulate:
-            prediction = self._simulated(prediction, surfaces)
+            prediction = self._simulated(prediction, surfaces, option, progress)
         return prediction
 
-    def _simulated(self, prediction: Prediction, surfaces: RoomSurfaces) -> Prediction:
+    def _simulated(
+        self,
+        prediction: Prediction,
+        surfaces: RoomSurfaces,
+        option: Option | None,
+        progress: Callable[[float, float], None] | None,
+    ) -> Prediction:
         from planner.predict.prediction import with_method
         from planner.predict.simulation import simulate_room
+        from planner.predict.tiles import described_places
+        from planner.treat.option import panel_places
 
-        result = simulate_room(self.room, surfaces, self.air)
+        places: dict[int, Any] = dict(described_places(self.room))
+        if option is not None:
+            hung = self.place(option).in_option(option)
+            places |= panel_places(self.surfaces, hung, self.catalogue)
+        result = simulate_room(self.room, surfaces, self.air, places=places, progress=progress)
         with_it = with_method(prediction, "simulated", result.reverberation_time)
         return replace(with_it, warnings=(*with_it.warnings, *result.notes))
 

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from planner.cli.options import AsJson, MeasuredPath, OptionPath, RoomPath
-from planner.cli.output import number, print_json, say, seconds, table, warn_all
+from planner.cli.output import number, print_json, say, seconds, table, warn, warn_all
 
 if TYPE_CHECKING:
     from planner.predict.prediction import Prediction
@@ -161,6 +161,7 @@ def predict(
         None if option is None else project.option(option),
         None if measured is None else read_measured(measured),
         simulate=simulate,
+        progress=None if as_json else _progress,
     )
     if as_json:
         print_json(prediction.to_json())
@@ -168,6 +169,11 @@ def predict(
         _show_prediction(project, prediction)
     if strict and prediction.misses_target:
         raise typer.Exit(1)
+
+
+def _progress(done: float, seconds: float) -> None:
+    rest = f"about {seconds:.0f} s left" if done < 1 else "done"
+    warn(f"  simulation {100 * done:.0f}%, {rest}")
 
 
 def _show_prediction(project: Project, prediction: Prediction) -> None:

@@ -18,7 +18,7 @@ from planner.measure.filterbank import (
     section_energies,
 )
 from planner.measure.sound_file import SoundFile
-from planner.measure.stops import FINE_S, FRAME_S, Burst
+from planner.measure.stops import FRAME_S, Burst
 from planner.measure.tamper import CLIPPED_RUN, Finding
 
 Array = NDArray[np.float64]
@@ -28,6 +28,9 @@ BEFORE_S = 1.5
 
 LEAST_TAIL_S = 5.0
 """At least this much after a switch-off is evaluated, where it is recorded. [s]"""
+
+NOISE_S, DECAY_S = 2.0, 1.1
+"""A switch-off is found from this much steady noise and decay around it, where there is as much. [s]"""
 
 SPARE_S = 0.06
 """The decay ends this long before the next burst begins. [s]"""
@@ -202,9 +205,7 @@ def read_recording(
                 notes.append(refusal)
             else:
                 usable.append(burst)
-        stops_s = stops.regular(
-            [_fine_stop(read, file.rate, burst, power) / file.rate for burst in usable]
-        )
+        stops_s = stops.regular(_fine_stops(read, file.rate, usable, power))
         for burst, stop_s in zip(usable, stops_s, strict=True):
             stop = round(stop_s * file.rate)
             end = _end_of_decay(power, burst, stop, file.rate, file.frames)
@@ -319,22 +320,30 @@ def _check(power: Array, burst: Burst, number: int) -> tuple[str, list[Finding]]
     return "", []
 
 
-def _fine_stop(
-    read: Callable[[int, int], NDArray[np.float32]], rate: int, burst: Burst, power: Array
-) -> int:
-    """Sample of the switch-off."""
-    around = 0.6
-    first = max(round((burst.stop * FRAME_S - around) * rate), round(burst.start * FRAME_S * rate))
-    last = round(min(burst.stop * FRAME_S + around, burst.next_start * FRAME_S) * rate)
-    samples = read(first, last).astype(float)
-    step = round(FINE_S * rate)
-    squared = np.diff(samples) ** 2
-    whole = len(squared) // step * step
-    fine = squared[:whole].reshape(-1, step).mean(axis=1)
-    expected = round((burst.stop * FRAME_S * rate - first) / step)
-    tail = power[burst.stop : burst.next_start]
-    floor = float(np.median(tail[-max(len(tail) // 4, 1) :]))
-    return first + stops.switch_off(fine, expected, floor) * step
+def _fine_stops(
+    read: Callable[[int, int], NDArray[np.float32]], rate: int, bursts: list[Burst], power: Array
+) -> list[float]:
+    """Times of the switch-offs. [s]."""
+    if not bursts:
+        return []
+    step = round(stops.FINE_S * rate)
+    firsts, approaches = [], []
+    for burst in bursts:
+        first = round(max(burst.stop * FRAME_S - NOISE_S, burst.start * FRAME_S + 0.2) * rate)
+        last = round(min(burst.stop * FRAME_S + DECAY_S, burst.next_start * FRAME_S) * rate)
+        squared = np.diff(read(first, last).astype(float)) ** 2
+        whole = len(squared) // step * step
+        tail = power[burst.stop : burst.next_start]
+        firsts.append(first)
+        approaches.append(
+            stops.Approach(
+                power=squared[:whole].reshape(-1, step).mean(axis=1),
+                expected=round((burst.stop * FRAME_S * rate - first) / step),
+                floor=float(np.median(tail[-max(len(tail) // 4, 1) :])),
+            )
+        )
+    found = stops.switch_offs(approaches)
+    return [(first + frame * step) / rate for first, frame in zip(firsts, found, strict=True)]
 
 
 def _spectral(

@@ -36,21 +36,33 @@ SHORTEST_NOISE_S = 1.0
 SHORTEST_SILENCE_S = 0.4
 """Least recording after it. [s]"""
 
-REACH_S, WINDOW_S = 0.15, 0.30
-"""A switch-off is sought this far around its rough place, by the decay this long behind it. [s]"""
+REACH_S = 0.15
+"""A switch-off is sought this far around its rough place. [s]"""
+
+NEAR_S = 0.01
+"""And then in fine frames this far around the place found in coarse ones. [s]"""
+
+COARSE = 4
+"""Fine frames in a coarse one: time and drop of the decay are found in a sixteenth of the work."""
+
+WINDOWS_S = (0.15, 0.8)
+"""It is judged by the decay behind it, until that has fallen by 20 dB, within these limits. [s]"""
 
 TIMES_S = np.geomspace(0.06, 6.0, 24)
 """Reverberation times tried for that decay. [s]"""
 
-DROPS = (1.0, 0.8, 0.6, 0.4, 0.15)
+DROPS = (1.0, 0.85, 0.7, 0.55, 0.4, 0.25, 0.1)
 """Shares of the level that stay when the direct sound ends. [-]"""
+
+DROP_STEPS = np.array([-0.1, -0.05, 0.0, 0.05, 0.1])
+"""How they are refined. [-]"""
 
 REGULAR_S = 0.02
 """Switch-offs this near to a steady beat are taken to follow it. [s]"""
 
-DROP_COST = 0.8
-"""A drop must explain the frames this much better than none; a frame counts some eight degrees of
-freedom, so this is a factor of several hundred in likelihood. [-]"""
+DROP_NATS = 3.0
+"""A drop must explain the frames this much better than none, as log-likelihood: about half the
+logarithm of their number (G. Schwarz, Ann. Stat. 6 (1978) 461). [-]"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -153,36 +165,83 @@ def steadiness_db(power: Array) -> float:
     return float(np.subtract(*np.quantile(slow, [0.95, 0.05]))) if len(slow) > 4 else 0.0
 
 
-def switch_off(power: Array, expected: int, floor: float) -> int:
-    """Frame at which steady noise turns into an exponential decay.
+@dataclass(frozen=True, slots=True)
+class Approach:
+    """What is recorded around one rough switch-off."""
+
+    power: Array
+    """Mean square of the differenced signal in frames of `FINE_S`, from steady noise to decay."""
+    expected: int
+    """Frame near which the level begins to fall."""
+    floor: float
+    """Mean square that the decay ends in."""
+
+
+def switch_offs(approaches: Sequence[Approach]) -> list[int]:
+    """Frames at which the bursts of one recording turn into exponential decays.
 
     Parameters
     ----------
-    power
-        Mean square of the differenced signal in frames of `FINE_S`, from steady noise to decay.
-    expected
-        Frame near which the level begins to fall.
-    floor
-        Mean square that the decay ends in.
+    approaches
+        One per burst, all of one microphone in one room.
 
     Returns
     -------
-    frame
-        First frame after the switch-off: the change point of greatest likelihood between constant
+    frames
+        First frame after each switch-off: the change point of greatest likelihood between constant
         noise and an exponential decay with floor, the frames' energies being gamma-distributed.
+        Time and drop of the decay are the room's and hence shared: each burst alone cannot tell a
+        drop of 1 dB, when the direct sound ends, from a switch-off a little earlier.
     """
-    reach, window = round(REACH_S / FINE_S), round(WINDOW_S / FINE_S)
-    low, high = max(expected - reach, 1), min(expected + reach, len(power) - 20)
-    end = min(high + window, len(power))
-    if high <= low:
-        return expected
-    steady = float(np.mean(power[: max(low - 5, 5)]))
-    if steady <= 0.0:
-        return expected
-    floor = min(max(floor, 1e-6 * steady), 0.5 * steady)
-    trial = _Trials(power[low:end], high - low, steady, floor)
-    # The grid of times is coarse: each drop is judged by its own best time, refined.
-    return low + min(_refined(trial, drop) for drop in DROPS)[3]
+    window = float(np.clip(np.median([_fall_s(each) for each in approaches]), *WINDOWS_S))
+    coarse = [_trials(each, COARSE, REACH_S, window) for each in approaches]
+    drop_cost = DROP_NATS / max(float(np.median([trial.shape for trial in coarse])), 1.0)
+
+    def cost(time_s: float, drop: float) -> float:
+        least = sum(trial(time_s, drop)[0] for trial in coarse)
+        return least + (drop_cost if drop < 1.0 else 0.0)
+
+    def refined(drop: float, times: Array) -> tuple[float, float, float]:
+        # The grid of times is coarse: each drop is judged by its own best time.
+        about = min((cost(time_s, drop), time_s) for time_s in times)[1]
+        finer = about * np.geomspace(times[0] / times[1], times[1] / times[0], 13)
+        return min((cost(time_s, drop), float(time_s), drop) for time_s in finer)
+
+    best = min(refined(drop, TIMES_S) for drop in DROPS)
+    if best[2] < 1.0:
+        near = best[1] * np.geomspace(0.9, 1.1, 5)
+        best = min(refined(float(drop), near) for drop in np.clip(best[2] + DROP_STEPS, 0.03, 0.98))
+    _, time_s, drop = best
+    found = []
+    for each, trial in zip(approaches, coarse, strict=True):
+        rough = trial(time_s, drop)[1]
+        fine = _trials(Approach(each.power, rough, each.floor), 1, NEAR_S, window, trial.steady)
+        found.append(fine(time_s, drop)[1])
+    return found
+
+
+def _fall_s(approach: Approach) -> float:
+    """How long the level takes to fall by 20 dB, or nearly to the floor. [s]."""
+    after = smoothed(approach.power[approach.expected :], 40)
+    steady = float(np.mean(approach.power[: max(approach.expected - 100, 1)]))
+    low = np.flatnonzero(after < max(0.01 * steady, 2.0 * approach.floor))
+    return float(low[0] if len(low) else len(after)) * FINE_S
+
+
+def _trials(
+    approach: Approach, group: int, reach_s: float, window_s: float, steady: float | None = None
+) -> _Trials:
+    """Candidates around the expected frame, in frames of `group` fine ones."""
+    step = FINE_S * group
+    whole = len(approach.power) // group * group
+    power = approach.power[:whole].reshape(-1, group).mean(axis=1)
+    expected, reach = approach.expected // group, round(reach_s / step)
+    high = min(expected + reach, len(power) - 2)
+    low = min(max(expected - reach, 1), high - 1)
+    if steady is None:
+        steady = float(np.mean(power[: max(low, 1)]))
+    end = min(high + round(window_s / step), len(power))
+    return _Trials(power, (low, high, end), group, max(steady, 1e-30), approach.floor)
 
 
 def regular(stops_s: Sequence[float]) -> tuple[float, ...]:
@@ -204,41 +263,35 @@ def regular(stops_s: Sequence[float]) -> tuple[float, ...]:
     return tuple(float(stop) for stop in fitted)
 
 
-def _refined(trial: _Trials, drop: float) -> tuple[float, float, float, int]:
-    """The best trial with about this drop."""
-    coarse = min(trial(time_s, drop) for time_s in TIMES_S)
-    step = float(TIMES_S[1] / TIMES_S[0])
-    shares = (0.9, 1.0, 1.1) if drop < 1.0 else (1.0,)
-    return min(
-        trial(coarse[1] * factor, min(drop * share, 0.999))
-        if drop < 1.0
-        else trial(coarse[1] * factor, 1.0)
-        for factor in np.geomspace(1.0 / step, step, 9)
-        for share in shares
-    )
-
-
 class _Trials:
     """Costs of every candidate for one decay time and one drop of level.
 
-    All candidates are judged by the same frames: steady before them, decaying from them on.
+    All candidates are judged by the same frames: steady before them, decaying from them on. The cost
+    is the negative log-likelihood over the shape of the frames' gamma distribution.
     """
 
-    def __init__(self, piece: Array, candidates: int, steady: float, floor: float) -> None:
+    def __init__(
+        self, power: Array, place: tuple[int, int, int], group: int, steady: float, floor: float
+    ) -> None:
+        low, high, end = place
+        piece, candidates = power[low:end], high - low
         count = len(piece)
-        self.steady, self.floor = steady, floor
+        self.low, self.group, self.steady = low, group, steady
+        self.floor = min(max(floor, 1e-6 * steady), 0.5 * steady)
+        before = power[:low]
+        spread = float(np.var(before)) if low > 20 else 0.0
+        self.shape = float(np.mean(before)) ** 2 / spread if spread > 0 else 8.0 * group
         self.behind = np.arange(count, count - candidates, -1) - 1
         cost = np.log(steady) + piece / steady
         self.before = np.concatenate([[0.0], np.cumsum(cost)])[:candidates]
         self.padded = np.concatenate([piece, np.zeros(candidates - 1)])
-        self.age = (np.arange(count) + 0.5) * FINE_S
+        self.age = (np.arange(count) + 0.5) * FINE_S * group
 
-    def __call__(self, time_s: float, drop: float) -> tuple[float, float, float, int]:
-        """Least cost, the parameters, and the candidate that has it."""
+    def __call__(self, time_s: float, drop: float) -> tuple[float, int]:
+        """Least cost, and the fine frame of the candidate that has it."""
         start = max(drop * self.steady - self.floor, 1e-3 * self.steady)
         mean = start * 10.0 ** (-6.0 * self.age / time_s) + self.floor
         cost = self.before + np.cumsum(np.log(mean))[self.behind]
         cost = cost + np.correlate(self.padded, 1.0 / mean, mode="valid")
         best = int(np.argmin(cost))
-        penalty = DROP_COST if drop < 1.0 else 0.0
-        return float(cost[best]) + penalty, float(time_s), float(drop), best
+        return float(cost[best]), (self.low + best) * self.group

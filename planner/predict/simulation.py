@@ -8,9 +8,10 @@ two threads at once.
 
 from __future__ import annotations
 
+import time
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -19,7 +20,7 @@ from numpy.typing import NDArray
 from planner.air import Air, energy_attenuation, speed_of_sound
 from planner.bands import OCTAVES, exact_midband
 from planner.errors import MissingPartError
-from planner.predict.room_modes import wall_alpha
+from planner.predict.tiles import Places, Tile, described_places, tiles
 from planner.room.model import Room
 from planner.room.surfaces import RoomSurfaces
 
@@ -43,15 +44,9 @@ MARGIN = 0.35
 """Sources and receivers keep this from surfaces where the room allows. [m]"""
 
 _BASE_HZ = 62.5
-_CENTRES = [_BASE_HZ * 2.0**n for n in range(len(OCTAVES))]
-_BOX = {
-    "west": "front",
-    "east": "back",
-    "south": "left",
-    "north": "right",
-    "floor": "floor",
-    "ceiling": "ceiling",
-}
+
+LOTS = 4
+"""Rays are sent in so many lots per source, to say how far it has got."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -74,7 +69,8 @@ def simulate_room(
     scattering: float = SCATTERING,
     rays: int = RAYS,
     seed: int = 1,
-    progress: Callable[[int, int], None] | None = None,
+    places: Places | None = None,
+    progress: Callable[[float, float], None] | None = None,
 ) -> Simulated:
     """Trace a room and read its decay.
 
@@ -83,8 +79,9 @@ def simulate_room(
     room
         Its footprint and height; sources and microphones of the survey are used where given.
     surfaces
-        Its coefficients, untreated or treated. Patches, openings and panels are averaged over the
-        surface they are on, by area; furnishings are spread over all surfaces.
+        Its coefficients, untreated or treated. Openings, patches and panels that have a place are
+        traced there; others are averaged over what is left of their surface. Furnishings are spread
+        over all surfaces.
     air
         State of the air.
     scattering
@@ -93,8 +90,10 @@ def simulate_room(
         Per source. [-]
     seed
         Bit for bit reproducible: one thread.
+    places
+        Where parts of `surfaces` lie; by default what `described_places` knows.
     progress
-        Called with the number of sources traced and of all.
+        Called after each lot of rays with the share that is done and the seconds still needed.
 
     Raises
     ------
@@ -108,32 +107,41 @@ def simulate_room(
             "pyroomacoustics is not installed: the simulation needs it. "
             "Install it with: pip install pyroomacoustics"
         ) from error
-    alpha = _coefficients(surfaces)
     sources, receivers = _places(room)
-    curves: list[Array] = []
+    walls = _walls(room, surfaces, described_places(room) if places is None else places)
+    curves = np.zeros((len(sources) * len(receivers), len(OCTAVES), 1))
+    began, lots = time.monotonic(), LOTS
     with _settings(pra, seed):
-        for number, source in enumerate(sources, 1):
-            traced = _room(pra, room, alpha, air, scattering)
-            traced.set_ray_tracing(
-                n_rays=rays, energy_thres=1e-12, receiver_radius=0.4, hist_bin_size=BIN_S
-            )
-            traced.add_source(list(source))
-            traced.add_microphone_array(np.array(receivers).T)
-            traced.image_source_model()
-            traced.ray_tracing()
-            for receiver in range(len(receivers)):
-                histogram = np.sum(
-                    [np.asarray(h) for h in traced.rt_histograms[receiver][0]], axis=0
+        for number, source in enumerate(sources):
+            for lot in range(lots):
+                traced = _room(pra, walls, air, scattering)
+                traced.set_ray_tracing(
+                    n_rays=-(-rays // lots),
+                    energy_thres=1e-12,
+                    receiver_radius=0.4,
+                    hist_bin_size=BIN_S,
                 )
-                curves.append(_with_air(np.asarray(histogram, float)[: len(OCTAVES)], air))
-            if progress:
-                progress(number, len(sources))
+                traced.add_source(list(source))
+                traced.add_microphone_array(np.array(receivers).T)
+                traced.image_source_model()
+                traced.ray_tracing()
+                for place in range(len(receivers)):
+                    histogram = np.sum(
+                        [np.asarray(h) for h in traced.rt_histograms[place][0]], axis=0
+                    )
+                    energy = np.asarray(histogram, float)[: len(OCTAVES)]
+                    curves = _longer(curves, energy.shape[1])
+                    curves[number * len(receivers) + place, :, : energy.shape[1]] += energy
+                if progress:
+                    done = (number * lots + lot + 1) / (len(sources) * lots)
+                    progress(done, (time.monotonic() - began) * (1.0 - done) / done)
+    curves = np.array([_with_air(curve, air) for curve in curves])
     times = np.array([[decay_time(band) for band in curve] for curve in curves])
     capped = int(np.sum(surfaces.alpha > LARGEST_ALPHA))
     notes = [
         f"Simulation: {len(sources)} sources, {len(receivers)} receivers, {rays} rays each, "
-        f"scattering {scattering:g} on every surface (an assumption), seed {seed}; patches, openings "
-        "and panels are averaged over their surface."
+        f"scattering {scattering:g} on every surface (an assumption), seed {seed}; what has no place "
+        "of its own is averaged over its surface."
     ]
     if capped:
         notes.append(f"{capped} coefficients above 0.99 were capped for the simulation.")
@@ -196,37 +204,40 @@ def _settings(pra: Any, seed: int) -> Iterator[None]:
             pra.constants.set(name, value)
 
 
-def _coefficients(surfaces: RoomSurfaces) -> dict[str, Array]:
-    """Mean coefficient per surface, furnishings spread over all of them, below 1. [-]."""
+def _longer(curves: Array, bins: int) -> Array:
+    more = bins - curves.shape[2]
+    return np.pad(curves, ((0, 0), (0, 0), (0, more))) if more > 0 else curves
+
+
+def _walls(room: Room, surfaces: RoomSurfaces, places: Places) -> list[Tile]:
+    """Pieces of every surface, furnishings spread over all of them, below 1. [-]."""
     spread = surfaces.item_count @ surfaces.item_area / surfaces.surface_area
-    return {
-        name: np.clip(alpha + spread, 0.0, LARGEST_ALPHA)
-        for name, alpha in wall_alpha(surfaces).items()
-    }
+    return [
+        replace(tile, alpha=np.clip(tile.alpha + spread, 0.0, LARGEST_ALPHA))
+        for tile in tiles(room, surfaces, places)
+    ]
 
 
-def _room(pra: Any, room: Room, alpha: dict[str, Array], air: Air, scattering: float) -> Any:
-    def material(name: str) -> Any:
-        return pra.Material(
-            {"coeffs": alpha[name].tolist(), "center_freqs": _CENTRES},
-            {"coeffs": [scattering] * len(_CENTRES), "center_freqs": _CENTRES},
-        )
-
-    options = {
-        "fs": RATE,
-        "max_order": 3 if room.is_rectangle else 1,
-        "ray_tracing": True,
-        "air_absorption": False,  # its table starts at 125 Hz whatever the grid: added afterwards
-        "temperature": air.temperature_c,
-        "humidity": air.humidity_percent,
-    }
-    if room.is_rectangle:
-        sides = {side: material(name) for side, name in _BOX.items()}
-        return pra.ShoeBox(list(room.dimensions), materials=sides, **options)
-    walls = [material(name) for name in room.wall_names]
-    traced = pra.Room.from_corners(room.footprint.T, materials=walls, **options)
-    traced.extrude(room.height, materials={name: material(name) for name in ("floor", "ceiling")})
-    return traced
+def _room(pra: Any, walls: list[Tile], air: Air, scattering: float) -> Any:
+    bands = len(OCTAVES)
+    return pra.Room(
+        [
+            # Its corners run the other way round, so that the normal points outwards.
+            pra.wall_factory(
+                np.ascontiguousarray(tile.corners[::-1].T),
+                tile.alpha,
+                np.full(bands, scattering),
+                f"{tile.surface} {number}",
+            )
+            for number, tile in enumerate(walls)
+        ],
+        fs=RATE,
+        max_order=1,
+        ray_tracing=True,
+        air_absorption=False,  # its table starts at 125 Hz whatever the grid: added afterwards
+        temperature=air.temperature_c,
+        humidity=air.humidity_percent,
+    )
 
 
 def _places(room: Room) -> tuple[list[Array], list[Array]]:

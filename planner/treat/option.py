@@ -178,6 +178,15 @@ def treated(surfaces: RoomSurfaces, option: Option, catalogue: Catalogue) -> Roo
     return room
 
 
+def panel_places(
+    surfaces: RoomSurfaces, option: Option, catalogue: Catalogue
+) -> dict[int, tuple[Rectangle, ...]]:
+    """Where the panels lie that `treated` adds to a room, by the number of their part."""
+    mounted = [item for item in option.items if catalogue.find(item.product).unit != "item"]
+    first = len(surfaces.parts)
+    return {first + n: item.placement for n, item in enumerate(mounted) if item.placement}
+
+
 def item_area(item: OptionItem, product: Product) -> float:
     """Surface that an item hides. [m²]."""
     if item.area is not None:
