@@ -35,6 +35,7 @@ def flags(port: int, *, browser: bool, lan: bool) -> dict[str, str]:
         "server.headless": "false" if browser else "true",
         "server.fileWatcherType": "none",
         "server.showEmailPrompt": "false",
+        "runner.magicEnabled": "false",
         "server.maxUploadSize": str(UPLOAD_MB),
         "browser.serverAddress": "localhost",
         "browser.gatherUsageStats": "false",

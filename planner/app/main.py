@@ -8,9 +8,10 @@ from pathlib import Path
 import streamlit as st
 
 from planner.app.launch import FOLDER_VARIABLE
-from planner.app.show import plain, refusal
+from planner.app.show import plain, refusal, theme
 from planner.app.work import Work, drafts, new_draft, new_work, open_work
 from planner.errors import PlannerError
+from planner.report.palette import DARK
 
 KEY = "work"
 """Under this key the session keeps its one project."""
@@ -39,6 +40,11 @@ h3 { font-size: 1.2rem !important; }
 </style>"""
 """Less empty space and smaller headings than usual; small print dark enough to read (4.5 : 1)."""
 
+DARK_STYLE = """<style>
+[data-testid="stBaseButton-primary"] p, [data-baseweb="tag"] span { color: #0e1117; }
+</style>"""
+"""White on the pale accent of the dark page could not be read."""
+
 
 def main() -> None:
     """One run of the app."""
@@ -48,7 +54,8 @@ def main() -> None:
         page_icon=str(Path(__file__).with_name("icon.png")),
         layout="wide",
     )
-    folder = Path(__file__).parent / "pages"
+    # Not called "pages": Streamlit would show files of that folder by itself, without what follows.
+    folder = Path(__file__).parent / "views"
     pages = [
         st.Page(
             folder / name,
@@ -61,6 +68,8 @@ def main() -> None:
     ]
     page = st.navigation(pages, position="top")
     st.html(STYLE)
+    if theme() is DARK:
+        st.html(DARK_STYLE)
     work = current()
     st.query_params[QUERY] = str(work.folder)
     asked = work.conflict

@@ -196,6 +196,14 @@ def test_the_whole_loop(page, demo_project):
     assert {host.split(":")[0] for host in page.hosts} <= {"127.0.0.1", "localhost"}
 
 
+def test_the_first_visit_may_be_to_any_page(page):
+    """A bookmark of a fresh server: the page stands under its links and its project's name."""
+    page.goto(f"{page.address}/shopping-list")
+    page.get_by_role("heading", name="Shopping list", level=1).wait_for(timeout=60_000)
+    assert page.get_by_role("link", name="Projects", exact=True).first.is_visible()
+    assert page.get_by_text("every change is saved at once").is_visible()
+
+
 @pytest.mark.parametrize("width", [1280, 390])
 def test_every_page_is_usable_and_accessible(browser, demo_project, tmp_path, width):
     """No serious fault by axe-core, nothing wider than the screen, a picture of each page kept to look at."""

@@ -289,12 +289,12 @@ def target_and_air(data: dict[str, Any]) -> None:
     data["air"] = air
 
 
+# Where the fields stand that a part of the room file belongs to.
 SECTIONS = {
     "shape": "sizes", "name": "sizes", "units": "sizes", "surfaces": "surfaces", "opening": "opening",
     "patch": "patch", "furnishing": "furnishing", "keep_out": "keep_out", "positions": "places",
     "target": "target", "air": "target",
 }  # fmt: skip
-"""Where the fields stand that a part of the room file belongs to."""
 
 
 def section(name: str, title: str, fill: Callable[[], None], *, expanded: bool = False) -> None:
