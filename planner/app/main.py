@@ -41,7 +41,7 @@ h3 { font-size: 1.2rem !important; }
 """Less empty space and smaller headings than usual; small print dark enough to read (4.5 : 1)."""
 
 DARK_STYLE = """<style>
-[data-testid="stBaseButton-primary"] p, [data-baseweb="tag"] span { color: #0e1117; }
+[data-testid="stBaseButton-primary"] p, [data-tag], [data-tag] * { color: #0e1117; }
 </style>"""
 """White on the pale accent of the dark page could not be read."""
 

@@ -204,8 +204,8 @@ def test_the_first_visit_may_be_to_any_page(page):
     assert page.get_by_text("every change is saved at once").is_visible()
 
 
-@pytest.mark.parametrize("width", [1280, 390])
-def test_every_page_is_usable_and_accessible(browser, demo_project, tmp_path, width):
+@pytest.mark.parametrize(("width", "scheme"), [(1280, "light"), (390, "dark")])
+def test_every_page_is_usable_and_accessible(browser, demo_project, tmp_path, width, scheme):
     """No serious fault by axe-core, nothing wider than the screen, a picture of each page kept to look at."""
     if not AXE.is_file():
         if os.environ.get("CI"):
@@ -215,7 +215,7 @@ def test_every_page_is_usable_and_accessible(browser, demo_project, tmp_path, wi
     shutil.copytree(demo_project, place)
     process, address = serve(place)
     try:
-        context = browser.new_context(viewport={"width": width, "height": 900})
+        context = browser.new_context(viewport={"width": width, "height": 900}, color_scheme=scheme)
         page = context.new_page()
         faults = {}
         for path, title in PAGES.items():
