@@ -219,13 +219,16 @@ def _walls(room: Room, surfaces: RoomSurfaces, places: Places) -> list[Tile]:
 
 
 def _room(pra: Any, walls: list[Tile], air: Air, scattering: float) -> Any:
-    bands = len(OCTAVES)
+    # As many bands as the library makes of this rate, one above ours: with fewer it reads whatever
+    # lies behind them in memory.
+    bands = len(pra.ShoeBox([1, 1, 1], fs=RATE).octave_bands.centers)
+    above = np.arange(bands).clip(max=len(OCTAVES) - 1)
     return pra.Room(
         [
             # Its corners run the other way round, so that the normal points outwards.
             pra.wall_factory(
                 np.ascontiguousarray(tile.corners[::-1].T),
-                tile.alpha,
+                tile.alpha[above],
                 np.full(bands, scattering),
                 f"{tile.surface} {number}",
             )
