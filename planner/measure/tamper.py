@@ -12,6 +12,10 @@ from planner.measure.stops import FRAME_S, level, smoothed
 
 Array = NDArray[np.float64]
 
+FADED_FRAMES = 4
+"""By so many frames the first 10 dB of a fade take longer than the next: in a room that falls by 3 dB a
+frame, rounding to frames alone makes three. [-]"""
+
 CLIPPED_RUN = 3
 """Equal samples in a row at the largest value that make a clipped peak."""
 DRIFT_DB = 1.0
@@ -155,8 +159,8 @@ def fading(power: Array, start: int) -> Finding | None:
         if not len(beyond):
             return None
         marks.append(int(beyond[0]))
-    early, late = marks[1] / 10.0, (marks[2] - marks[1]) / 10.0
-    if marks[1] * FRAME_S < 0.05 or early < 1.6 * max(late, 0.1):
+    early, late = marks[1], marks[2] - marks[1]
+    if early * FRAME_S < 0.05 or early < 1.6 * max(late, 1) or early - late < FADED_FRAMES:
         return None
     return Finding(
         f"the noise was faded out over {marks[1] * FRAME_S:.2f} s, not switched off",

@@ -302,6 +302,34 @@ def test_a_recorder_that_tampers_is_caught(tmp_path, clean, kind, message):
         measure([path])
 
 
+def test_very_dry_rooms_are_not_taken_for_fades(tmp_path):
+    """T = 0.15 to 0.25 s falls by 10 dB in three or four frames: 48 bursts, none may be dropped."""
+    for number in range(12):
+        samples, stops = interrupted(
+            time_s=(0.15, 0.2, 0.25)[number % 3],
+            bursts=4,
+            on_s=2.5 + 0.013 * number,
+            seed=100 + number,
+        )
+        recording = read_recording(write(tmp_path / "a.wav", samples))
+        assert len(recording.stops_s) == len(stops), words(recording)
+
+
+@pytest.mark.parametrize("fade_s", [0.1, 0.3])
+def test_short_fades_are_caught_in_a_dry_room(tmp_path, fade_s):
+    """A straight ramp of the gain, as an editor or a soft mute makes it."""
+    from scipy.signal import fftconvolve
+
+    rate, rng = RATE, np.random.default_rng(5)
+    t = np.arange(int(9 * rate)) / rate
+    gain = np.interp(t % 4.5, [0, 0.5, 0.501, 3.0, 3.0 + fade_s, 4.5], [0, 0, 1, 1, 0, 0])
+    heard = fftconvolve(pink(len(t), rate, rng) * gain, response(0.2, rate, rng))[: len(t)]
+    heard = 0.1 * (heard + 0.003 * pink(len(t), rate, rng))
+    recording = read_recording(write(tmp_path / "a.wav", heard))
+    assert "faded out" in words(recording)
+    assert not recording.stops_s
+
+
 def test_recording_stopped_too_early(tmp_path, clean):
     samples, stops = clean
     cut = samples[: int((stops[0] + 0.15) * RATE)]
