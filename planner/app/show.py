@@ -41,7 +41,8 @@ def chart(picture: Chart, *, key: str, table: bool = True, to_scale: bool = Fals
     One that is drawn to scale keeps its own size instead.
     """
     sized = picture if to_scale else picture.sized("container", picture.spec.get("height", 260))
-    spec = dict(sized.vega_lite(theme()))
+    spec = apart(dict(sized.vega_lite(theme())))
+    spec["description"] = f"{picture.title}; in words and numbers below"
     if not to_scale:
         spec["autosize"] = {"type": "fit-x", "contains": "padding"}
     # A screen reader gets the sentence and the table; nameless dots of a plot would only be in its way.
@@ -55,6 +56,39 @@ def chart(picture: Chart, *, key: str, table: bool = True, to_scale: bool = Fals
         )
         if numbers.open:
             numbers.dataframe(picture.table(), hide_index=True, width="stretch", key=f"{key}-table")
+
+
+def apart(spec: dict[str, Any]) -> dict[str, Any]:
+    """The same chart with its data beside it, under names that do not change.
+
+    A chart of which only data changed is refilled by the browser; one that changed itself is built
+    anew, which takes several times as long.
+    """
+    import pyarrow as pa
+
+    tables: dict[str, pa.Table] = {}
+
+    def named(node: Any) -> Any:
+        if isinstance(node, list):
+            return [named(each) for each in node]
+        if not isinstance(node, dict):
+            return node
+        rows = node["data"].get("values") if isinstance(node.get("data"), dict) else None
+        if rows and all(isinstance(row, dict) for row in rows):
+            columns = dict.fromkeys(column for row in rows for column in row)
+            table = pa.table({name: [row.get(name) for row in rows] for name in columns})
+            # Whole numbers would reach the browser as a kind that its arithmetic does not take.
+            kinds = [
+                pa.field(one.name, pa.float64()) if pa.types.is_integer(one.type) else one
+                for one in table.schema
+            ]
+            name = f"table-{len(tables)}"
+            tables[name] = table.cast(pa.schema(kinds))
+            node = {**node, "data": {"name": name}}
+        return {key: named(value) for key, value in node.items()}
+
+    found: dict[str, Any] = named(spec)
+    return {**found, "datasets": {**found.get("datasets", {}), **tables}} if tables else found
 
 
 def drawing(svg: str, words: str) -> None:
@@ -80,8 +114,7 @@ def notes(texts: Sequence[str], title: str = "Doubts and their cures") -> None:
     if not texts:
         return
     with st.expander(f"{title} ({len(texts)})"):
-        for text in texts:
-            st.markdown(f"- {plain(text)}")
+        st.markdown("\n".join(f"- {plain(text)}" for text in texts))
 
 
 def shown(metres: float | None, units: str) -> str:

@@ -21,6 +21,7 @@ import tomli_w
 from planner.errors import InputError, OptionError, PlannerError, ProjectError, RoomError
 from planner.measure.measured import Measured, measured_to_csv, read_measured
 from planner.measure.measurement import Measurement
+from planner.predict.prediction import Prediction
 from planner.project import Project
 from planner.room.files import read_room, room_from, room_to_toml
 from planner.room.model import RECTANGLE_WALLS, Room
@@ -72,11 +73,29 @@ class Work:
     """Grows with every project that is opened: widgets of another project are not these."""
     digests: dict[str, str] = field(default_factory=dict)
     remembered: str = ""
+    _sketch: tuple[Project, Prediction | None] | None = None
+    _unwritten: bool = False
 
     @property
     def project(self) -> Project:
-        """The room with what lies beside it."""
+        """The room with what lies beside it, as it lies there now."""
         return Project(self.room, self.folder, self.folder / "room.toml")
+
+    @property
+    def sketch(self) -> Project:
+        """The room alone; what follows from it is kept as long as the room is."""
+        if self._sketch is None or self._sketch[0].room is not self.room:
+            self._sketch = (self.project, None)
+        return self._sketch[0]
+
+    @property
+    def forecast(self) -> Prediction:
+        """Prediction of the room as it is described."""
+        sketch = self.sketch
+        assert self._sketch is not None
+        found = self._sketch[1] or sketch.predict()
+        self._sketch = (sketch, found)
+        return found
 
     @property
     def option(self) -> Option | None:
@@ -93,24 +112,37 @@ class Work:
         """Name of a file that someone else changed meanwhile."""
         return next(iter(self.unsaved), None)
 
-    def change_room(self, data: dict[str, Any]) -> bool:
-        """Take a changed description in metres; a refusal is kept in `problem`."""
+    def change_room(self, data: dict[str, Any], *, write: bool = True) -> bool:
+        """Take a changed description in metres; a refusal is kept in `problem`.
+
+        Who wants to show the change before it is written calls `write_room` right after.
+        """
         names = new_wall_names(self.room, data)
         try:
             room = room_from(renamed(data, names), lengths_in="m")
-            Project(room, self.folder).surfaces  # noqa: B018 - refuses unknown materials
+            project = Project(room, self.folder)
+            project.surfaces  # noqa: B018 - refuses unknown materials
         except PlannerError as error:
             self.problem = error
             return False
         self.problem = None
         if room != self.room:
             self.room = room
+            self._sketch = (project, None)
             self.suggestion = None
-            self.save("room.toml", room_to_toml(room))
+            self._unwritten = True
+            if write:
+                self.write_room()
             if names:
                 for option in list(self.options.values()):
                     self.set_option(_moved(option, names), replacing=option.name)
         return True
+
+    def write_room(self) -> None:
+        """Write the room where it changed since the last time."""
+        if self._unwritten:
+            self._unwritten = False
+            self.save("room.toml", room_to_toml(self.room))
 
     def set_option(self, option: Option, *, replacing: str | None = None) -> None:
         """Keep an option under its name, in place of another where that is named."""

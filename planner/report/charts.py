@@ -4,6 +4,7 @@
 `Chart.description` the accessible sentence, `to_svg` a picture without any browser.
 """
 
+from planner.report.band_layers import axis_top
 from planner.report.band_series import Series, TargetSteps
 from planner.report.band_words import target_sentence
 from planner.report.chart import Chart, config, to_svg
@@ -29,6 +30,7 @@ __all__ = [
     "TargetSteps",
     "Theme",
     "absorption",
+    "axis_top",
     "config",
     "decay",
     "formula_range",

@@ -2,19 +2,25 @@
 
 from __future__ import annotations
 
+import contextlib
 from collections.abc import Callable
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import streamlit as st
 
 from planner.absorption.library import builtin
-from planner.app import cached, show
+from planner.app import show
 from planner.app.main import current
+from planner.bands import OCTAVES
 from planner.errors import PlannerError
 from planner.predict.targets import USES
 from planner.report import charts
 from planner.report.drawings import on_screen
+from planner.room.lengths import METRES_PER, parse_length
 from planner.room.model import RECTANGLE_WALLS
+
+if TYPE_CHECKING:
+    from streamlit.delta_generator import DeltaGenerator
 
 work = current()
 units = work.room.units
@@ -50,22 +56,32 @@ def choose(label: str, value: str, options: dict[str, str], name: str) -> str:
     return str(chosen)
 
 
-def sizes(data: dict[str, Any]) -> None:
-    """Name, unit, dimensions or corners."""
+def heading(data: dict[str, Any]) -> None:
+    """Name, unit and kind of plan: what the fields below depend on."""
+    one, two, three = st.columns([2, 1, 1])
     data["name"] = (
-        st.text_input("Name", value=work.room.name, key=key("name")).strip() or work.room.name
+        one.text_input("Name", value=work.room.name, key=key("name")).strip() or work.room.name
     )
-    left, right = st.columns(2)
-    data["units"] = left.radio(
+    data["units"] = two.radio(
         "Lengths in", ["m", "ft"], index=["m", "ft"].index(units), horizontal=True, key=key("units"),
         format_func={"m": "metres", "ft": "feet"}.get,
     )  # fmt: skip
-    kind = right.radio(
-        "Plan", ["rectangle", "corners"], index=0 if work.room.is_rectangle else 1, horizontal=True,
-        key=key("plan"), format_func={"rectangle": "rectangle", "corners": "any corners"}.get,
+    kind = three.radio(
+        "Plan", ["rectangle", "corners"], index=0 if box else 1, horizontal=True, key=key("plan"),
+        format_func={"rectangle": "rectangle", "corners": "any corners"}.get,
     )  # fmt: skip
+    length, width, _ = work.room.dimensions
+    sides: dict[str, Any] = {"length": length, "width": width, "footprint": None}
+    if kind == "corners":
+        places = [(float(x), float(y)) for x, y in work.room.footprint]
+        sides = {"length": None, "width": None, "footprint": places}
+    data["shape"] = {**data["shape"], **sides}
+
+
+def sizes(data: dict[str, Any]) -> None:
+    """Dimensions or corners."""
     length, width, height = work.room.dimensions
-    if kind == "rectangle":
+    if data["shape"]["footprint"] is None:
         one, two, three = st.columns(3)
         with one:
             length = show.length("Length", length, units, key=key("length")) or length
@@ -73,10 +89,10 @@ def sizes(data: dict[str, Any]) -> None:
             width = show.length("Width", width, units, key=key("width")) or width
         with three:
             height = show.length("Height", height, units, key=key("height")) or height
-        data["shape"] = {**data["shape"], "length": length, "width": width, "footprint": None}
+        data["shape"] = {**data["shape"], "length": length, "width": width}
     else:
         height = show.length("Height", height, units, key=key("height")) or height
-        data["shape"] = {**data["shape"], "length": None, "width": None, "footprint": corners()}
+        data["shape"] = {**data["shape"], "footprint": corners()}
     data["shape"]["height"] = height
 
 
@@ -85,7 +101,6 @@ def corners() -> list[tuple[float, float]]:
     import pandas as pd
 
     from planner.app.tables import edited
-    from planner.room.lengths import METRES_PER
 
     base = pd.DataFrame(work.room.footprint / METRES_PER[units], columns=["x", "y"]).round(4)
     st.caption("Corners in plan, anticlockwise; x from front to back, y from left to right.")
@@ -113,10 +128,12 @@ def surfaces(data: dict[str, Any]) -> None:
         each = [choose(f"Wall {name}", chosen[name], options, f"m-{name}") for name in walls]
         found["walls"] = dict(zip(walls, each, strict=True)) if work.room.is_rectangle else each
     data["surfaces"] = found
-    with st.expander("Their coefficients"):
-        rows = work.project.surfaces
-        st.dataframe(_coefficients(rows), hide_index=True, width="stretch")
-        st.caption("From tables; an asterisk marks what no source gives and the planner assumes.")
+    table = st.expander("Their coefficients", key=key("coefficients"), on_change="rerun")
+    if table.open:
+        table.dataframe(_coefficients(work.sketch.surfaces), hide_index=True, width="stretch")
+        table.caption(
+            "From tables; an asterisk marks what no source gives and the planner assumes."
+        )
 
 
 def fit_walls(data: dict[str, Any]) -> None:
@@ -357,44 +374,85 @@ def details() -> None:
 def sketch() -> None:
     """Sizes with what they do beside them; a changed size draws this part alone again."""
     left, right = st.columns([5, 6], gap="large")
+    before = standing()
+    sides = data["shape"]["footprint"] is None
+    if sides:
+        # What was typed is known before its field is drawn: its effect need not wait for the fields.
+        typed(data)
+        take(right)
     with left, st.container(border=True):
         if work.problem is not None and place_of(work.problem) == "sizes":
             refusal()
         sizes(data)
-        fit_walls(data)
-    before, conflict, name = str(work.problem), work.conflict, work.room.name
-    work.change_room(data)
-    now = (
-        str(work.problem),
-        work.conflict,
-        work.room.name,
-        work.room.units,
-        work.room.is_rectangle,
-    )
-    if now != (before, conflict, name, units, box):
-        st.rerun()  # the rest of the page is to show it too
+    if not sides:
+        take(right)
     with left:
         drawings()
-    with right:
-        effect()
+    if standing() != before:
+        st.rerun()  # the rest of the page is to show it too
+
+
+def take(place: DeltaGenerator) -> None:
+    """Take the description as it stands and show its effect."""
+    fit_walls(data)
+    work.change_room(data, write=False)
+    try:
+        with place:
+            effect()
+    finally:
+        work.write_room()
+
+
+def standing() -> tuple[object, ...]:
+    """What the rest of the page shows of the room beside its sizes."""
+    room = work.room
+    return str(work.problem), work.conflict, room.name, room.units, room.is_rectangle
+
+
+def typed(data: dict[str, Any]) -> None:
+    """Take the sizes as the fields hold them; what is no length is refused beside its field."""
+    for side, metres in zip(("length", "width", "height"), work.room.dimensions, strict=True):
+        text = st.session_state.get(key(side))
+        if text is not None and text != show.shown(metres, units):
+            with contextlib.suppress(PlannerError):
+                data["shape"] = {**data["shape"], side: parse_length(text, units)}
 
 
 def effect() -> None:
-    """What the room sounds like."""
+    """What the room sounds like: the numbers first, as a picture takes longer to appear."""
     if work.problem is not None:
         st.warning("The last change is not taken: see the refusal beside its field.")
-    prediction = cached.prediction(work, calibrated=False)
-    series = [show.prediction_series(prediction, "Predicted", "untreated")]
-    show.chart(
-        charts.reverberation(series, prediction.target, title="Predicted reverberation time"),
-        key="room-prediction",
-    )
-    geometry = work.project.geometry
+    prediction, geometry = work.forecast, work.sketch.geometry
+    middle = OCTAVES.index(500)
+    low, high = prediction.interval_s[:, middle]
     st.caption(
+        f"**{prediction.time[middle]:.2f} s at 500 Hz** (95 % interval {low:.2f} to {high:.2f} s) · "
         f"Volume {geometry.volume:.1f} m³ · surface {geometry.surface_area:.1f} m² · Schroeder "
         f"frequency {prediction.schroeder_hz:.0f} Hz"
     )
-    show.notes([*work.project.warnings, *prediction.warnings])
+    series = [show.prediction_series(prediction, "Predicted", "untreated")]
+    show.chart(
+        charts.reverberation(
+            series,
+            prediction.target,
+            title="Predicted reverberation time",
+            highest=axis(charts.axis_top(series, prediction.target)),
+        ),
+        key="room-prediction",
+    )
+    show.notes([*work.sketch.warnings, *prediction.warnings])
+
+
+AXES = (0.2, 0.4, 0.6, 0.8, 1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0, 10.0)
+"""Upper ends of the chart's axis, far enough apart that few changes reach the next. [s]."""
+
+
+def axis(top: float) -> float:
+    """Upper end of the chart's axis: it stays while sizes change, so that the change is seen."""
+    kept = float(st.session_state.get(key("axis"), 0.0))
+    if not top <= kept <= 2.5 * top:
+        kept = st.session_state[key("axis")] = next((end for end in AXES if end >= top), top)
+    return kept
 
 
 def drawings() -> None:
@@ -408,6 +466,7 @@ def drawings() -> None:
 
 
 st.title("Room")
+heading(data)
 above = st.container()
 details()
 with above:
