@@ -45,10 +45,16 @@ def chart(picture: Chart, *, key: str, table: bool = True, to_scale: bool = Fals
     spec["description"] = f"{picture.title}; in words and numbers below"
     if not to_scale:
         spec["autosize"] = {"type": "fit-x", "contains": "padding"}
+    signs = " ".join(spec["title"].get("subtitle", ()))
+    # As text of the page it wraps on a narrow screen instead of being cut.
+    spec["title"] = {**spec["title"], "subtitle": ()}
     # A screen reader gets the sentence and the table; nameless dots of a plot would only be in its way.
     spec["config"] = {**spec["config"], "mark": {"aria": False}}
     st.vega_lite_chart(spec, width="content" if to_scale else "stretch", theme=None, key=key)
-    st.caption(plain(picture.description))
+    words = (
+        f"{signs[0].upper()}{signs[1:]}. {picture.description}" if signs else picture.description
+    )
+    st.caption(plain(words))
     if table:
         # Filled once it is opened: a table costs the browser more than the chart.
         numbers = st.expander(
