@@ -21,6 +21,8 @@ RATED_KG: dict[str, tuple[str, float]] = {
     "unknown": ("any fixing, until the wall is known", 3.0),
 }
 """Fixing and rated load by wall type. Common practice, no source. [kg]"""
+BOARDED_CEILING = ("wood screw into a joist, not into the board", RATED_KG["timber"][1])
+"""Nothing is hung overhead from a board alone. Common practice, no source."""
 LEAST_WALL, LEAST_OVERHEAD = 2, 4
 """Fixings per panel that are never gone below."""
 
@@ -65,8 +67,14 @@ def fixings_per_panel(
     least = LEAST_OVERHEAD if overhead else LEAST_WALL
     if weight_kg is None or not math.isfinite(weight_kg):
         return least
-    rated = RATED_KG.get(wall_type, RATED_KG["unknown"])[1]
+    rated = _fixing(wall_type, overhead)[1]
     return max(least, math.ceil(weight_kg * safety / rated - 1e-9))
+
+
+def _fixing(wall_type: str, overhead: bool) -> tuple[str, float]:
+    if overhead and wall_type == "plasterboard":
+        return BOARDED_CEILING
+    return RATED_KG.get(wall_type, RATED_KG["unknown"])
 
 
 def fixing_line(
@@ -80,7 +88,7 @@ def fixing_line(
     show: Quantities | None = None,
 ) -> FixingLine:
     """The line of the list for so many panels of one weight."""
-    kind, rated = RATED_KG.get(wall_type, RATED_KG["unknown"])
+    kind, rated = _fixing(wall_type, overhead)
     note = f"assumed {(show or Quantities()).weight(rated)} rated each, safety factor {safety:g}"
     if weight_kg is None:
         note = "no weight is known: weigh a panel first"

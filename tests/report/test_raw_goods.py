@@ -126,3 +126,13 @@ def test_overhead_panels_get_a_second_retention_each():
     assert (up.each, up.retention, up.total) == (4, 5, 25)
     assert fixing_line("a", 5, 6.0, "timber", overhead=False).retention == 0
     assert "weigh" in fixing_line("a", 1, None, "timber", overhead=True).note
+
+
+def test_nothing_hangs_from_a_board_alone():
+    """24 kg · 4 / 20 kg in the joist; the wall's board anchor of 5 kg would be 20. Common practice."""
+    up = fixing_line("a", 1, 24.0, "plasterboard", overhead=True)
+    assert up.each == 5
+    assert "joist" in up.kind
+    assert "not into the board" in up.kind
+    assert "20.0 kg" in up.note
+    assert fixing_line("a", 1, 24.0, "plasterboard", overhead=False).each == 20

@@ -89,6 +89,7 @@ if listed.fixings:
                     "goes": one.where,
                     "panels": one.panels,
                     "each": one.each,
+                    "second retentions": one.retention,
                     "in all": one.total,
                     "kind": one.kind,
                     "note": one.note,
