@@ -46,6 +46,9 @@ MOST_OPTIONS = 12
 
 SURVEY = "recordings/survey.csv"
 
+ASKED: dict[str, type] = {"files": list, "impulse": bool, "thirds": bool, "state": str}
+"""What is kept of an evaluation of recordings."""
+
 LOOKED_AT = "looked-at.toml"
 """What the pages show of a project, beside it; nothing that a result depends on without saying so."""
 
@@ -62,6 +65,8 @@ class Work:
     measured: Measured | None = None
     measurement: Measurement | None = None
     """With the decay curves; only in the session that evaluated the recordings."""
+    evaluated: dict[str, Any] = field(default_factory=dict)
+    """What was asked of the recordings, so that their decays can be shown again after a reload."""
     use_measured: bool = False
     """Calibrate the room by its measurement."""
     suggestion: Suggestion | None = None
@@ -187,7 +192,13 @@ class Work:
 
     def remember(self) -> None:
         """Keep what is looked at, so that a reload shows the same."""
-        text = tomli_w.dumps({"use_measured": self.use_measured, "chosen": self.chosen or ""})
+        text = tomli_w.dumps(
+            {
+                "use_measured": self.use_measured,
+                "chosen": self.chosen or "",
+                "evaluated": self.evaluated,
+            }
+        )
         if text != self.remembered:
             self.remembered = text
             write_atomically(self.folder / LOOKED_AT, text)
@@ -297,6 +308,9 @@ def _recall(work: Work) -> None:
     work.use_measured = bool(known.get("use_measured")) and work.measured is not None
     if known.get("chosen") in work.options:
         work.chosen = str(known["chosen"])
+    asked = known.get("evaluated")
+    if isinstance(asked, dict) and {name: type(value) for name, value in asked.items()} == ASKED:
+        work.evaluated = {**asked, "files": [str(name) for name in asked["files"]]}
 
 
 def new_work(folder: Path, serial: int = 0) -> Work:

@@ -120,6 +120,28 @@ def test_recordings_are_evaluated(start, project):
     assert any("engineering method" in caption.value for caption in app.caption)
 
 
+def test_decays_come_back_after_a_reload(start, project):
+    """Evaluated in one session as impulses or not, looked at in the next without asking again."""
+    app = start("recordings.py")
+    chosen = next(one for one in app.multiselect if one.label == "Evaluate")
+    chosen.set_value(["A1.flac", "B2.flac"]).run()
+    next(b for b in app.button if b.label == "Evaluate recordings").click().run(timeout=120)
+    assert "Decays" in [header.value for header in app.header]
+    again = start("recordings.py")
+    assert not again.exception
+    assert "Decays" in [header.value for header in again.header]
+    assert len(next(one for one in again.selectbox if one.label == "Position").options) == 2
+
+
+def test_other_recordings_do_not_pass_for_those_measured(start, project):
+    for path in (project / "recordings").glob("B*.flac"):
+        path.unlink()
+    app = start("recordings.py")
+    assert not app.exception
+    assert "Decays" not in [header.value for header in app.header]
+    assert any("once more" in caption.value for caption in app.caption)
+
+
 def test_a_recording_that_is_none_is_refused_in_words(start, project):
     for path in (project / "recordings").glob("*.flac"):
         path.write_bytes(b"no sound at all")

@@ -167,3 +167,34 @@ def test_a_file_that_appeared_meanwhile_is_not_overwritten(work):
     other.set_option(option.model_copy(update={"name": "Suggestion 1", "note": "theirs"}))
     work.set_option(option.model_copy(update={"name": "Suggestion 1", "note": "mine"}))
     assert work.conflict == "options/suggestion-1.toml"
+
+
+@pytest.mark.parametrize(
+    "note",
+    [
+        "no toml [",
+        "evaluated = 3",
+        'evaluated = {files = "A1.flac", impulse = false, thirds = false, state = ""}',
+        'evaluated = {files = ["A1.flac"], impulse = 1, thirds = false, state = ""}',
+    ],
+)
+def test_a_damaged_note_of_what_was_looked_at_is_no_harm(work, note):
+    (work.folder / "looked-at.toml").write_text(note, encoding="utf-8")
+    again, notes = open_work(work.folder)
+    assert (again.evaluated, notes) == ({}, [])
+
+
+def test_what_was_asked_of_the_recordings_is_remembered(work):
+    work.evaluated = {"files": ["A1.flac"], "impulse": False, "thirds": True, "state": "empty"}
+    work.remember()
+    assert open_work(work.folder)[0].evaluated == work.evaluated
+
+
+def test_a_change_can_be_looked_at_before_it_is_written(work):
+    data = work.room.model_dump(by_alias=True)
+    data["shape"]["height"] = 2.8
+    assert work.change_room(data, write=False)
+    assert work.forecast.time is not None
+    assert "height = 2.6" in (work.folder / "room.toml").read_text(encoding="utf-8")
+    work.write_room()
+    assert "height = 2.8" in (work.folder / "room.toml").read_text(encoding="utf-8")

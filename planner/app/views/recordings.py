@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import io
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import pandas as pd
@@ -13,12 +13,16 @@ from planner.app import show, survey
 from planner.app.main import current
 from planner.app.tables import HELD, cells, edited
 from planner.app.work import SURVEY
+from planner.bands import OCTAVES
 from planner.errors import PlannerError
 from planner.measure.measured import measured_to_csv
 from planner.measure.measurement import SOUND
 from planner.measure.noise import cue_sheet, lengths_for, noise_signal
 from planner.measure.survey import KINDS, STATES
 from planner.report import charts
+
+if TYPE_CHECKING:
+    from planner.measure.measurement import Measurement
 
 work = current()
 folder = work.folder / "recordings"
@@ -156,6 +160,22 @@ def evaluate(chosen: list[str]) -> None:
         )
     if not st.button("Evaluate recordings", type="primary", disabled=not chosen, key="evaluate"):
         return
+    asked = {
+        "files": chosen,
+        "impulse": impulse,
+        "thirds": thirds,
+        "state": "" if state.startswith("as") else state,
+    }
+    result = asked_for(asked)
+    if result is not None:
+        if not is_the_same(result):
+            work.use_measured = False  # another measurement is to be looked at before it counts
+        work.set_measured(result)
+        work.evaluated = asked
+
+
+def asked_for(asked: dict[str, Any]) -> Measurement | None:
+    """What the recordings give, or None after showing why they were refused."""
     bar = st.progress(0.0, "Reading …")
 
     def tell(done: int, total: int) -> None:
@@ -163,23 +183,44 @@ def evaluate(chosen: list[str]) -> None:
         bar.progress(done / total, f"{done} of {total} recordings")
 
     try:
-        result = survey.evaluated(
+        return survey.evaluated(
             work,
-            [folder / name for name in chosen],
-            impulse=impulse,
-            thirds=thirds,
-            state="" if state.startswith("as") else state,
+            [folder / name for name in asked["files"]],
+            impulse=asked["impulse"],
+            thirds=asked["thirds"],
+            state=asked["state"],
             progress=tell,
         )
-        if work.measured is None or measured_to_csv(work.measured) != measured_to_csv(
-            result.measured
-        ):
-            work.use_measured = False  # another measurement is to be looked at before it counts
-        work.set_measured(result)
     except PlannerError as error:
         show.refusal(error)
+        return None
     finally:
         bar.empty()
+
+
+def is_the_same(result: Measurement) -> bool:
+    """Does an evaluation say what the project's measurement says."""
+    return work.measured is not None and measured_to_csv(work.measured) == measured_to_csv(
+        result.measured
+    )
+
+
+def recall(bands: int) -> None:
+    """Work the decays out again that a new session does not have, once."""
+    tried = f"recalled-{work.serial}"
+    asked = work.evaluated or {
+        "files": present,
+        "impulse": False,
+        "thirds": bands > len(OCTAVES) + 2,
+        "state": "",
+    }
+    if st.session_state.get(tried) != asked and set(asked["files"]) <= set(present):
+        result = asked_for(asked)
+        st.session_state[tried] = asked
+        if result is not None and is_the_same(result):
+            work.measurement = result
+            return
+    st.caption("Evaluate the recordings once more to look at their decays.")
 
 
 uploads()
@@ -235,10 +276,10 @@ def results() -> None:
         ],
         "Findings and their cures",
     )
+    if work.measurement is None and present:
+        recall(len(measured.bands_hz))
     if work.measurement is not None:
         decays()
-    elif present:
-        st.caption("Evaluate the recordings once more to look at their decays.")
 
 
 def doubts(measured: Any) -> list[str]:
