@@ -16,6 +16,7 @@ from planner.bands import OCTAVES
 from planner.errors import PlannerError
 from planner.report import charts
 from planner.report.drawings import on_screen
+from planner.report.quantities import Quantities
 from planner.treat.option import Option
 
 if TYPE_CHECKING:
@@ -64,7 +65,7 @@ def suggest(work: Work) -> None:
                 show.refusal(error)
                 return
     if work.suggestion is not None:
-        _answer(work.suggestion)
+        _answer(work.suggestion, Quantities(work.room.units))
 
 
 def proof(answer: Suggestion) -> str:
@@ -77,7 +78,7 @@ def proof(answer: Suggestion) -> str:
     return f"{answer.cost:.2f} {unit}; no list can be cheaper by more than {answer.gap:.1%}."
 
 
-def _answer(answer: Suggestion) -> None:
+def _answer(answer: Suggestion, units: Quantities) -> None:
     """The proof, and what would help where the target cannot be met."""
     says = show.plain(proof(answer))
     says = says[0].upper() + says[1:]
@@ -91,13 +92,13 @@ def _answer(answer: Suggestion) -> None:
     for band in answer.short_bands:
         st.markdown(
             f"- {band.band_hz} Hz stays {band.side}: {band.reached_s:.2f} s, limit "
-            f"{band.limit_s:.2f} s; {band.missing_m2:.1f} m² of absorption are missing, "
-            f"{band.largest_possible_m2:.1f} m² can be had within the limits."
+            f"{band.limit_s:.2f} s; {units.area(band.missing_m2)} of absorption are missing, "
+            f"{units.area(band.largest_possible_m2)} can be had within the limits."
         )
     for limit in answer.binding if answer.status == "infeasible" else ():
-        st.markdown(f"- Used up: {show.plain(limit)}.")
+        st.markdown(f"- Used up: {show.plain(units.sentence(limit))}.")
     for relaxation in answer.relaxations:
-        st.markdown(f"- It could be met: {show.plain(relaxation.says)}")
+        st.markdown(f"- It could be met: {show.plain(units.sentence(relaxation.says))}")
     if answer.second_opinion is not None:
         st.markdown(show.plain(answer.second_opinion.says))
     show.notes([*answer.warnings, *st.session_state.get("placement-notes", [])])
@@ -248,7 +249,7 @@ def _column(row: Alternative, work: Work) -> dict[str, str]:
     def shown(value: float | None, digits: int = 0, unit: str = "") -> str:
         return "–" if value is None or not np.isfinite(value) else f"{value:,.{digits}f}{unit}"
 
-    currency = work.room.treatment.currency
+    currency, units = work.room.treatment.currency, Quantities(work.room.units)
     return {
         "cost": shown(row.cost, 2, f" {currency}"),
         "outside the target at": ", ".join(f"{hz} Hz" for hz in row.outside_hz) or "no judged band",
@@ -256,7 +257,7 @@ def _column(row: Alternative, work: Work) -> dict[str, str]:
             None if row.probability is None else 100 * row.probability, 0, " %"
         ),
         "deepest": shown(row.depth_mm, 0, " mm"),
-        "covers": shown(row.area_m2, 1, " m²"),
+        "covers": units.area(row.area_m2),
         "cost per m² of absorption at 125 Hz": shown(row.cost_per_m2_125, 0, f" {currency}"),
         "cost per m² of absorption at 1 kHz": shown(row.cost_per_m2_1000, 0, f" {currency}"),
         **{

@@ -32,6 +32,7 @@ def check(room: RoomPath, as_json: AsJson = False) -> None:
     """Read a room file and print what was understood."""
     from planner.bands import OCTAVES, band_label
     from planner.project import open_project
+    from planner.report.quantities import Quantities
 
     project = open_project(room)
     surfaces, shape = project.surfaces, project.geometry
@@ -40,10 +41,12 @@ def check(room: RoomPath, as_json: AsJson = False) -> None:
         return
     length, width, height = project.room.dimensions
     say(f"{project.room.name}")
-    say(f"{length:.2f} × {width:.2f} × {height:.2f} m, {project.room.described_state}")
+    show = Quantities(project.room.units)
+    sides = " × ".join(show.length(side) for side in (length, width, height))
+    say(f"{sides}, {project.room.described_state}")
     say(
-        f"Volume {shape.volume:.1f} m³, surface {shape.surface_area:.1f} m², "
-        f"mean free path {shape.mean_free_path:.2f} m"
+        f"Volume {show.volume(shape.volume)}, surface {show.area(shape.surface_area)}, "
+        f"mean free path {show.length(shape.mean_free_path)}"
     )
     rows = [
         [
@@ -178,6 +181,7 @@ def _progress(done: float, seconds: float) -> None:
 
 def _show_prediction(project: Project, prediction: Prediction) -> None:
     from planner.bands import OCTAVES, band_label
+    from planner.report.quantities import Quantities
 
     rows = [[name.replace("_", " "), *map(seconds, t)] for name, t in prediction.methods.items()]
     low, high = prediction.interval_s
@@ -189,8 +193,9 @@ def _show_prediction(project: Project, prediction: Prediction) -> None:
         rows.append(["         to", *map(seconds, target.high)])
     labels = [band_label(hz) + ("*" if hz in prediction.assumed_hz else "") for hz in OCTAVES]
     say(project.room.name)
+    show = Quantities(project.room.units)
     say(
-        f"Volume {prediction.volume_m3:.1f} m³, surface {prediction.surface_m2:.1f} m², "
+        f"Volume {show.volume(prediction.volume_m3)}, surface {show.area(prediction.surface_m2)}, "
         f"Schroeder frequency {prediction.schroeder_hz:.0f} Hz"
     )
     say()

@@ -11,6 +11,7 @@ from planner.cli.options import AsJson, MeasuredPath, OptionPath, RoomPath
 from planner.cli.output import number, print_json, say, seconds, table, warn, warn_all
 
 if TYPE_CHECKING:
+    from planner.report.quantities import Quantities
     from planner.treat.suggestion import Suggestion
 
 
@@ -59,6 +60,7 @@ def suggest(
     """Find the cheapest treatment that meets the target in every band, and prove it."""
     from planner.measure.measured import read_measured
     from planner.project import open_project
+    from planner.report.quantities import Quantities
     from planner.treat.option import write_option
 
     project = open_project(room)
@@ -90,11 +92,12 @@ def suggest(
             }
         )
     else:
-        _show(answer)
+        shown = Quantities(project.room.units)
+        _show(answer, shown)
         for other in others:
             say()
             say(f"Another list, {other.option.name}:")
-            _show(other, brief=True)
+            _show(other, shown, brief=True)
         warn_all(placement.warnings)
         if written is not None:
             say(f"Written: {written}")
@@ -102,7 +105,7 @@ def suggest(
         raise typer.Exit(1)
 
 
-def _show(answer: Suggestion, *, brief: bool = False) -> None:
+def _show(answer: Suggestion, show: Quantities, *, brief: bool = False) -> None:
     from planner.bands import OCTAVES, band_label
 
     table(
@@ -140,14 +143,14 @@ def _show(answer: Suggestion, *, brief: bool = False) -> None:
     for band in answer.short_bands:
         say(
             f"{band.band_hz} Hz stays {band.side}: {band.reached_s:.2f} s, limit {band.limit_s:.2f} s; "
-            f"{band.missing_m2:.1f} m² of absorption missing, {band.largest_possible_m2:.1f} m² can be "
-            "had within the limits."
+            f"{show.area(band.missing_m2)} of absorption missing, {show.area(band.largest_possible_m2)} "
+            "can be had within the limits."
         )
     if answer.status == "infeasible":
         for limit in answer.binding:
-            say(f"Used up: {limit}.")
+            say(f"Used up: {show.sentence(limit)}.")
         for relaxation in answer.relaxations:
-            say(f"It could be met: {relaxation.says}")
+            say(f"It could be met: {show.sentence(relaxation.says)}")
     if answer.second_opinion is not None:
         says = answer.second_opinion.says.rstrip(".")
         say(f"{says[:1].upper()}{says[1:]}.")

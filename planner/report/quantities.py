@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from dataclasses import dataclass
 from fractions import Fraction
 
@@ -59,6 +60,20 @@ class Quantities:
         if self.imperial:
             return f"{square_metres / METRES_PER['ft'] ** 2:.1f} ft²"
         return f"{square_metres:.2f} m²"
+
+    def sentence(self, text: str) -> str:
+        """A finished sentence with its areas and weights in these units; they round up.
+
+        ``allow 2.4 m² more`` becomes ``allow 25.9 ft² more``.
+        """
+
+        def converted(found: re.Match[str]) -> str:
+            per, unit = (METRES_PER["ft"] ** 2, "ft²") if found[2] == "m²" else (POUND, "lb")
+            return f"{math.ceil(float(found[1]) / per * 10 - 1e-6) / 10:.1f} {unit}"
+
+        return (
+            re.sub(r"(\d+(?:\.\d+)?) (m²|kg)(?![\w²/])", converted, text) if self.imperial else text
+        )
 
     def volume(self, cubic_metres: float) -> str:
         """``52.7 m³`` or ``1862 ft³``."""

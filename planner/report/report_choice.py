@@ -146,8 +146,10 @@ def treatment_sections(data: ReportData) -> list[Section]:
             wide=1,
             small=True,
         )
-        builder.bullets(chosen.binding, "Limits that this list uses up")
-        builder.bullets([relaxation.says for relaxation in chosen.relaxations], "What would help")
+        builder.bullets(
+            [show.sentence(limit) for limit in chosen.binding], "Limits that this list uses up"
+        )
+        builder.bullets([show.sentence(one.says) for one in chosen.relaxations], "What would help")
         builder.bullets(chosen.warnings, "Doubts")
         second = chosen.second_opinion
         if second is not None:

@@ -4,6 +4,7 @@ import shutil
 
 import pytest
 
+from planner.app import survey
 from planner.app.survey import evaluated, flag_in_words, places, safe_name, survey_text, take
 from planner.app.work import open_work
 from planner.errors import RecordingError
@@ -78,6 +79,7 @@ def test_a_survey_with_an_empty_position_is_refused():
 
 
 def test_the_same_recordings_are_not_evaluated_twice(work):
+    survey._kept.clear()  # other tests evaluate the same files
     files = [work.folder / "recordings" / name for name in ("A1.flac", "B2.flac")]
     calls = []
 

@@ -16,6 +16,7 @@ from planner.errors import PlannerError
 from planner.predict.targets import USES
 from planner.report import charts
 from planner.report.drawings import on_screen
+from planner.report.quantities import Quantities
 from planner.room.lengths import METRES_PER, parse_length
 from planner.room.model import RECTANGLE_WALLS
 
@@ -423,12 +424,13 @@ def effect() -> None:
     if work.problem is not None:
         st.warning("The last change is not taken: see the refusal beside its field.")
     prediction, geometry = work.forecast, work.sketch.geometry
+    shown = Quantities(work.room.units)
     middle = OCTAVES.index(500)
     low, high = prediction.interval_s[:, middle]
     st.caption(
         f"**{prediction.time[middle]:.2f} s at 500 Hz** (95 % interval {low:.2f} to {high:.2f} s) · "
-        f"Volume {geometry.volume:.1f} m³ · surface {geometry.surface_area:.1f} m² · Schroeder "
-        f"frequency {prediction.schroeder_hz:.0f} Hz"
+        f"Volume {shown.volume(geometry.volume)} · surface {shown.area(geometry.surface_area)} · "
+        f"Schroeder frequency {prediction.schroeder_hz:.0f} Hz"
     )
     series = [show.prediction_series(prediction, "Predicted", "untreated")]
     show.chart(

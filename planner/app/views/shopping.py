@@ -13,6 +13,7 @@ from planner.app import show
 from planner.app.main import current
 from planner.app.work import file_name
 from planner.handover import buying, report_data, shopping
+from planner.report.quantities import Quantities
 from planner.treat.option import option_to_toml
 
 work = current()
@@ -58,8 +59,9 @@ st.dataframe(
 )
 left, middle, right = st.columns(3)
 left.metric("Total", "–" if bought.total is None else f"{bought.total:,.2f} {currency}")
-middle.metric("Covered", f"{bought.area_m2:.1f} m²")
-right.metric("Weight", "–" if bought.weight_kg is None else f"{bought.weight_kg:.0f} kg")
+shown = Quantities(work.room.units)
+middle.metric("Covered", shown.area(bought.area_m2))
+right.metric("Weight", shown.weight(bought.weight_kg))
 for text in bought.warnings:
     st.warning(show.plain(text[0].upper() + text[1:]))
 if listed.raw:
