@@ -11,7 +11,7 @@ from planner.report.quantities import Quantities
         # 2.4 / 0.09290304 = 25.83…: an allowance rounds up, or it would not be enough.
         ("allow 2.4 m² more on the back", "allow 25.9 ft² more on the back"),
         ("let the ceiling carry 20 kg more", "let the ceiling carry 44.1 lb more"),
-        ("ceiling: 12 of 12 m² used, 10 kg/m² allowed", "ceiling: 12 of 129.2 ft² used, 10 kg/m² allowed"),
+        ("sheets of 10 kg/m² at most", "sheets of 10 kg/m² at most"),
         ("raise the budget by 300 EUR", "raise the budget by 300 EUR"),
     ],
 )  # fmt: skip
