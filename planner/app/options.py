@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping, Sequence
 from functools import partial
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import pandas as pd
@@ -59,13 +60,13 @@ def suggest(work: Work) -> None:
                 work.suggestion = found
                 note = f"{SUGGESTED}{proof(found)}"[:2000]
                 work.set_option(found.option.model_copy(update={"note": note}))
-                st.session_state["placement-notes"] = list(placement.warnings)
+                work.answer = _in_words(found, placement.warnings, Quantities(work.room.units))
                 st.session_state["edited"] = st.session_state.get("edited", 0) + 1
             except PlannerError as error:
                 show.refusal(error)
                 return
-    if work.suggestion is not None:
-        _answer(work.suggestion, Quantities(work.room.units))
+    if work.answer:
+        _answer(work.answer)
 
 
 def proof(answer: Suggestion) -> str:
@@ -78,30 +79,40 @@ def proof(answer: Suggestion) -> str:
     return f"{answer.cost:.2f} {unit}; no list can be cheaper by more than {answer.gap:.1%}."
 
 
-def _answer(answer: Suggestion, units: Quantities) -> None:
-    """The proof, and what would help where the target cannot be met."""
+def _in_words(answer: Suggestion, placing: Sequence[str], units: Quantities) -> dict[str, Any]:
+    """The proof, and what would help where the target cannot be met; as a reload is to find it."""
     says = show.plain(proof(answer))
-    says = says[0].upper() + says[1:]
+    lines = [
+        f"- {band.band_hz} Hz stays {band.side}: {band.reached_s:.2f} s, limit "
+        f"{band.limit_s:.2f} s; {units.area(band.missing_m2)} of absorption are missing, "
+        f"{units.area(band.largest_possible_m2)} can be had within the limits."
+        for band in answer.short_bands
+    ]
     if answer.status == "infeasible":
-        st.error(says)
-    else:
-        st.success(says)
-    st.markdown(
-        f"Probability that every judged band lies inside the target: **{answer.probability:.0%}**"
-    )
-    for band in answer.short_bands:
-        st.markdown(
-            f"- {band.band_hz} Hz stays {band.side}: {band.reached_s:.2f} s, limit "
-            f"{band.limit_s:.2f} s; {units.area(band.missing_m2)} of absorption are missing, "
-            f"{units.area(band.largest_possible_m2)} can be had within the limits."
-        )
-    for limit in answer.binding if answer.status == "infeasible" else ():
-        st.markdown(f"- Used up: {show.plain(units.sentence(limit))}.")
-    for relaxation in answer.relaxations:
-        st.markdown(f"- It could be met: {show.plain(units.sentence(relaxation.says))}")
+        lines += [f"- Used up: {show.plain(units.sentence(limit))}." for limit in answer.binding]
+    lines += [
+        f"- It could be met: {show.plain(units.sentence(relaxation.says))}"
+        for relaxation in answer.relaxations
+    ]
     if answer.second_opinion is not None:
-        st.markdown(show.plain(answer.second_opinion.says))
-    show.notes([*answer.warnings, *st.session_state.get("placement-notes", [])])
+        lines += ["", show.plain(answer.second_opinion.says)]
+    sure = f"{answer.probability:.0%}"
+    return {
+        "met": answer.status != "infeasible",
+        "proof": says[0].upper() + says[1:],
+        "sure": f"Probability that every judged band lies inside the target: **{sure}**",
+        "lines": "\n".join(lines),
+        "doubts": [*answer.warnings, *placing],
+    }
+
+
+def _answer(words: Mapping[str, Any]) -> None:
+    """Show what was answered last."""
+    (st.success if words["met"] else st.error)(words["proof"])
+    st.markdown(words["sure"])
+    if words["lines"]:
+        st.markdown(words["lines"])
+    show.notes(words["doubts"])
 
 
 def manage(work: Work) -> None:

@@ -49,6 +49,9 @@ SURVEY = "recordings/survey.csv"
 ASKED: dict[str, type] = {"files": list, "impulse": bool, "thirds": bool, "state": str}
 """What is kept of an evaluation of recordings."""
 
+ANSWERED: dict[str, type] = {"met": bool, "proof": str, "sure": str, "lines": str, "doubts": list}
+"""What is kept of a suggestion beside its option."""
+
 LOOKED_AT = "looked-at.toml"
 """What the pages show of a project, beside it; nothing that a result depends on without saying so."""
 
@@ -70,6 +73,8 @@ class Work:
     use_measured: bool = False
     """Calibrate the room by its measurement."""
     suggestion: Suggestion | None = None
+    answer: dict[str, Any] = field(default_factory=dict)
+    """What the last suggestion was said to prove, in words."""
     problem: PlannerError | None = None
     """Why the last change to the room was not taken."""
     unsaved: dict[str, str] = field(default_factory=dict)
@@ -134,7 +139,7 @@ class Work:
         if room != self.room:
             self.room = room
             self._sketch = (project, None)
-            self.suggestion = None
+            self.suggestion, self.answer = None, {}
             self._unwritten = True
             if write:
                 self.write_room()
@@ -197,6 +202,8 @@ class Work:
                 "use_measured": self.use_measured,
                 "chosen": self.chosen or "",
                 "evaluated": self.evaluated,
+                "answer": self.answer,
+                "of": _described(self) if self.answer else "",
             }
         )
         if text != self.remembered:
@@ -308,9 +315,21 @@ def _recall(work: Work) -> None:
     work.use_measured = bool(known.get("use_measured")) and work.measured is not None
     if known.get("chosen") in work.options:
         work.chosen = str(known["chosen"])
-    asked = known.get("evaluated")
-    if isinstance(asked, dict) and {name: type(value) for name, value in asked.items()} == ASKED:
+    if _kinds(known.get("evaluated")) == ASKED:
+        asked = known["evaluated"]
         work.evaluated = {**asked, "files": [str(name) for name in asked["files"]]}
+    if _kinds(known.get("answer")) == ANSWERED and known.get("of") == _described(work):
+        answer = known["answer"]
+        work.answer = {**answer, "doubts": [str(doubt) for doubt in answer["doubts"]]}
+
+
+def _kinds(table: Any) -> dict[str, type]:
+    return {n: type(value) for n, value in table.items()} if isinstance(table, dict) else {}
+
+
+def _described(work: Work) -> str:
+    """Tells whether the room is still the one that an answer was about."""
+    return hashlib.sha256(room_to_toml(work.room).encode()).hexdigest()[:16]
 
 
 def new_work(folder: Path, serial: int = 0) -> Work:

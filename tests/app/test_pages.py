@@ -157,11 +157,19 @@ def test_a_suggestion_becomes_an_option(start, project):
         timeout=120
     )
     assert not app.exception
-    assert any("no list within these limits is cheaper" in one.value for one in app.success)
+    proofs = [one.value for one in app.success]
+    assert any("no list within these limits is cheaper" in proof for proof in proofs)
     assert (project / "options" / "suggestion-1.toml").is_file()
     app.switch_page(str(PAGES / "shopping.py")).run()
     assert not app.exception
     assert any("EUR" in metric.value for metric in app.metric)
+    again = start("treatment.py")  # a reload
+    assert [one.value for one in again.success] == proofs
+    room = project / "room.toml"
+    room.write_text(room.read_text(encoding="utf-8").replace("height = 2.6", "height = 2.7"))
+    other = start("treatment.py")
+    assert not other.exception
+    assert not other.success  # it was about another room
 
 
 def test_options_are_copied_renamed_and_deleted(start, project):
