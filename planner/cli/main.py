@@ -8,7 +8,7 @@ from collections.abc import Sequence
 import typer
 
 from planner import __version__
-from planner.cli import browser, rooms, seat, site, treatment
+from planner.cli import absorbers, browser, rooms, seat, site, treatment
 from planner.cli.output import warn
 from planner.errors import PlannerError
 
@@ -26,7 +26,7 @@ app = typer.Typer(
     rich_markup_mode=None,  # plain help answers in half the time
 )
 
-for group in (rooms, seat, site, treatment, browser):
+for group in (rooms, absorbers, seat, site, treatment, browser):
     group.register(app)
 
 

@@ -1,4 +1,4 @@
-"""Before building: ``check``, ``materials``, ``predict`` and ``modes``."""
+"""Before building: ``check``, ``predict`` and ``modes``."""
 
 from __future__ import annotations
 
@@ -21,7 +21,6 @@ MODES_SHOWN = 60
 def register(app: typer.Typer) -> None:
     """Add these commands."""
     app.command(epilog="Example: planner check net-loft/room.toml")(check)
-    app.command(epilog="Example: planner materials plasterboard")(materials)
     app.command(epilog="Example: planner predict net-loft --option net-loft/options/first.toml")(
         predict
     )
@@ -80,66 +79,6 @@ def check(room: RoomPath, as_json: AsJson = False) -> None:
     if project.target is not None:
         say(f"Target: {project.target.description} ({project.target.citation}).")
     warn_all(project.warnings)
-
-
-def materials(
-    words: Annotated[
-        list[str] | None, typer.Argument(help="Part of an id or description; all where none.")
-    ] = None,
-    as_json: AsJson = False,
-) -> None:
-    """List the materials that a room file may name, with their sources."""
-    from planner.absorption.library import bibliography, builtin, coefficients
-    from planner.bands import OCTAVES, band_label
-
-    terms = [word.lower() for word in words or []]
-    found = [
-        material
-        for material in builtin().values()
-        if all(
-            term in f"{material.id} {material.description} {material.category}".lower()
-            for term in terms
-        )
-    ]
-    if as_json:
-        print_json(
-            {
-                "bands_hz": OCTAVES,
-                "materials": [
-                    {
-                        "id": material.id,
-                        "description": material.description,
-                        "category": material.category,
-                        "mounting": material.mounting,
-                        "per_item": material.per_item,
-                        "alpha": material.alpha,
-                        "u": coefficients(material).u,
-                        "source": bibliography()[material.source],
-                        "place_in_source": material.place_in_source,
-                    }
-                    for material in found
-                ],
-            }
-        )
-        return
-    for per_item, title in (
-        (False, "Absorption coefficient per octave (Hz), from tables"),
-        (True, "Absorption area of one piece per octave (m²), from tables"),
-    ):
-        rows = [
-            [
-                material.id,
-                *(number(value) for value in material.alpha),
-                material.source,
-            ]
-            for material in found
-            if material.per_item is per_item
-        ]
-        if rows:
-            table(["id", *map(band_label, OCTAVES), "source"], rows, title=title)
-    if not found:
-        near = ", ".join(builtin().near(" ".join(terms))) or "none"
-        say(f"No material has these words. The nearest: {near}.")
 
 
 def predict(
