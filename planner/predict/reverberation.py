@@ -45,6 +45,58 @@ def time_from_area(
     return time
 
 
+def decaying_area(
+    volume: ArrayLike, time: ArrayLike, *, speed_of_sound: ArrayLike = SPEED_OF_SOUND
+) -> Array:
+    """K V / T: the effective absorption area, the air's included, behind a reverberation time.
+
+    inf where the time is 0, 0 where it is infinite. [m²]
+    """
+    with np.errstate(divide="ignore"):
+        area: Array = (
+            decay_constant(speed_of_sound) * np.asarray(volume, float) / np.asarray(time, float)
+        )
+    return area
+
+
+def area_from_time(
+    formula: str,
+    time: ArrayLike,
+    volume: ArrayLike,
+    surface_area: ArrayLike,
+    *,
+    air_attenuation: ArrayLike,
+    speed_of_sound: ArrayLike,
+) -> Array:
+    """Absorption area of the surfaces behind a reverberation time: `sabine` or `eyring` turned round.
+
+    Parameters
+    ----------
+    formula
+        ``sabine`` or ``eyring``; the latter counts coefficients up to 0.99.
+    time
+        Shape ``(..., band)``. [s]
+    volume, surface_area
+        Of the room. [m³], [m²]
+    air_attenuation, speed_of_sound
+        As `sabine`.
+
+    Returns
+    -------
+    area
+        Shape of `time`: k V / T − 4 m V, or S (1 − exp(−(k V / T − 4 m V) / S)). Negative where the
+        time is longer than the air alone would allow; not capped; NaN where the time is. [m²]
+    """
+    v, s = np.asarray(volume, float), np.asarray(surface_area, float)
+    needed = decaying_area(v, time, speed_of_sound=speed_of_sound)
+    needed = needed - 4.0 * np.asarray(air_attenuation, float) * v
+    if formula == "sabine":
+        return np.asarray(needed, float)
+    with np.errstate(over="ignore"):
+        area: Array = -s * np.expm1(-needed / s)
+    return area
+
+
 def sabine(
     volume: ArrayLike,
     absorption_area: ArrayLike,

@@ -13,9 +13,9 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from planner.predict.reverberation import LARGEST_ALPHA
 from planner.reconcile.calibration import Calibration
 from planner.reconcile.forward import (
-    LARGEST_IN_EYRING,
     area_of,
     area_uncertainty,
     formula_uncertainty,
@@ -169,7 +169,7 @@ def _fit(
     above = np.zeros(shape, bool)
     if formula == "eyring":
         is_material = np.array([row.kind == "material" for row in rows])[:, None]
-        above = is_material & (start.mean.reshape(shape) > LARGEST_IN_EYRING)
+        above = is_material & (start.mean.reshape(shape) > LARGEST_ALPHA)
     best: tuple[float, BoxedNormal, Array] | None = None
     for held in [above, np.zeros(shape, bool)][: 2 if above.any() else 1]:
         design, fixed = _design(rows, held, bands)
@@ -193,7 +193,7 @@ def _design(
     for number, row in enumerate(rows):
         free = ~held[number, bands]
         design[np.arange(bands.size), number, bands] = row.amount * free
-        fixed += row.amount * LARGEST_IN_EYRING * ~free
+        fixed += row.amount * LARGEST_ALPHA * ~free
     return design.reshape(bands.size, -1), fixed
 
 

@@ -10,7 +10,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.bands import OCTAVES
-from planner.reconcile.forward import LARGEST_IN_EYRING, Shell
+from planner.predict.reverberation import LARGEST_ALPHA
+from planner.reconcile.forward import Shell
 from planner.reconcile.posterior import BoxedNormal
 from planner.reconcile.prior import BANDS, Unknown, item_groups
 from planner.room.surfaces import RoomSurfaces
@@ -133,7 +134,7 @@ class Calibration:
 
     def _spread_rest(self, alpha: Array, rest: Array) -> Array:
         """Coefficients ``(..., part, band)`` with the rest ``(..., band)`` spread over them."""
-        grows = alpha < LARGEST_IN_EYRING
+        grows = alpha < LARGEST_ALPHA
         total = np.einsum("p,...pb->...b", self.described.area, np.where(grows, alpha, 0.0))
         factor = np.maximum(1.0 + rest / np.maximum(total, 1e-9), 0.0)
         spread: Array = np.where(grows, alpha * factor[..., None, :], alpha)

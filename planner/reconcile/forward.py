@@ -7,18 +7,17 @@ is what makes the calibration a bounded linear least-squares problem.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from planner.air import Air, energy_attenuation, speed_of_sound
 from planner.bands import OCTAVES, exact_midband
+from planner.predict.reverberation import area_from_time, decaying_area, eyring, sabine
 from planner.room.surfaces import RoomSurfaces
 
 Array = NDArray[np.float64]
-
-LARGEST_IN_EYRING = 0.99
-"""Coefficients are capped at this in Eyring's formula. [-]"""
 
 FORMULA_FLOOR = 0.02
 """Relative standard uncertainty of any diffuse-field formula (a judgement, no source). [-]"""
@@ -45,6 +44,14 @@ class Shell:
     """Energy attenuation, shape ``(band,)``. [1/m]"""
     size_u: float
     """Relative standard uncertainty of a length of the room. [-]"""
+
+    @property
+    def carrier(self) -> dict[str, Any]:
+        """The air, as the formulas take it."""
+        return {
+            "air_attenuation": self.air_attenuation,
+            "speed_of_sound": self.speed_of_sound,
+        }
 
     @property
     def air_area(self) -> Array:
@@ -89,13 +96,11 @@ def time_of(room: Shell, area: ArrayLike, formula: str) -> Array:
     .. [1] W. C. Sabine, *Collected Papers on Acoustics*. Harvard Univ. Press, 1922.
     .. [2] C. F. Eyring, "Reverberation time in 'dead' rooms", JASA 1 (1930) 217.
     """
-    values = np.asarray(area, float)
+    values = np.maximum(np.asarray(area, float), 0.0)
     if formula == "eyring":
-        mean = np.clip(values / room.surface_area, 0.0, LARGEST_IN_EYRING)
-        values = -room.surface_area * np.log1p(-mean)
-    with np.errstate(divide="ignore"):
-        time: Array = _k(room) * room.volume / (np.maximum(values, 0.0) + room.air_area)
-    return time
+        mean = values / room.surface_area
+        return eyring(room.volume, room.surface_area, mean, **room.carrier)
+    return sabine(room.volume, values, **room.carrier)
 
 
 def area_of(room: Shell, time: ArrayLike, formula: str) -> Array:
@@ -104,23 +109,16 @@ def area_of(room: Shell, time: ArrayLike, formula: str) -> Array:
     Negative where the time is longer than the air alone would allow; not capped. Shape of `time`;
     NaN where the time is. [m²]
     """
-    needed = _k(room) * room.volume / np.asarray(time, float) - room.air_area
-    if formula == "sabine":
-        return needed
-    area: Array = -room.surface_area * np.expm1(-needed / room.surface_area)
-    return area
-
-
-def _k(room: Shell) -> float:
-    return float(24.0 * np.log(10.0) / room.speed_of_sound)
+    return area_from_time(formula, time, room.volume, room.surface_area, **room.carrier)
 
 
 def area_uncertainty(room: Shell, time: ArrayLike, time_u: ArrayLike, formula: str) -> Array:
     """Standard uncertainty of `area_of` from that of the time, to first order. [m²]."""
     t = np.asarray(time, float)
-    slope = _k(room) * room.volume / t**2
+    needed = decaying_area(room.volume, t, speed_of_sound=room.speed_of_sound)
+    slope = needed / t
     if formula == "eyring":
-        slope = slope * np.exp(-(_k(room) * room.volume / t - room.air_area) / room.surface_area)
+        slope = slope * np.exp(-(needed - room.air_area) / room.surface_area)
     u: Array = slope * np.asarray(time_u, float)
     return u
 

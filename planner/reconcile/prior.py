@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.bands import OCTAVES
-from planner.reconcile.forward import LARGEST_IN_EYRING
+from planner.predict.reverberation import LARGEST_ALPHA
 from planner.reconcile.posterior import BoxedNormal
 from planner.room.surfaces import RoomSurfaces
 
@@ -76,7 +76,7 @@ def unknowns(surfaces: RoomSurfaces, formula: str) -> tuple[Unknown, ...]:
 
 def counted(alpha: Array, formula: str) -> Array:
     """Coefficients as a formula counts them: capped for Eyring. [-]."""
-    return np.minimum(alpha, LARGEST_IN_EYRING) if formula == "eyring" else alpha
+    return np.minimum(alpha, LARGEST_ALPHA) if formula == "eyring" else alpha
 
 
 def _material(surfaces: RoomSurfaces, name: str) -> Unknown:

@@ -8,9 +8,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.air import speed_of_sound
+from planner.predict.reverberation import capped, decaying_area
 from planner.treat.task import Task
 from planner.treat.treatment import Axial
-from planner.treat.windows import CAP, air_m, decay_area, effective_volume
+from planner.treat.windows import air_m, effective_volume
 
 Array = NDArray[np.float64]
 
@@ -42,7 +43,7 @@ class Directions:
     def alpha(self, amounts: Array) -> Array:
         """Mean coefficients, shape ``(3, band)``. [-]."""
         alpha: Array = self.start + np.einsum("c,cjb->jb", amounts, self.slope)
-        return np.clip(alpha, 0.0, CAP)
+        return capped(alpha)
 
     def decay(self, alpha: Array) -> Array:
         """−S ln(1 − a) + 4 m V, shape of `alpha`. [m²]."""
@@ -93,5 +94,7 @@ def directions_of(task: Task) -> Directions:
         weight=(size / size.sum())[:, None],
         surface=surface,
         air_area=4.0 * air_m(task.air) * volume,
-        decay_area=float(decay_area(volume, 1.0, float(speed_of_sound(task.air.temperature_c)))),
+        decay_area=float(
+            decaying_area(volume, 1.0, speed_of_sound=speed_of_sound(task.air.temperature_c))
+        ),
     )

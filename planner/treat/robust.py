@@ -13,14 +13,14 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.air import Air, speed_of_sound
+from planner.air import Air
 from planner.bands import OCTAVES
 from planner.errors import OptionError
 from planner.predict.formulas import reverberation_time
 from planner.predict.targets import TargetLimits
 from planner.predict.uncertainty import draw
 from planner.room.surfaces import RoomSurfaces
-from planner.treat.windows import air_m, area_for, effective_volume
+from planner.treat.windows import area_behind
 
 Array = NDArray[np.float64]
 
@@ -125,10 +125,8 @@ def area_spread(
 
     By formula, shape ``(band,)`` each, in the room of nominal size and air. [m²]
     """
-    volume, surface = effective_volume(surfaces), float(surfaces.area.sum())
-    speed, air_area = float(speed_of_sound(air.temperature_c)), 4.0 * air_m(air) * volume
     spread = {}
     for name, drawn in times.items():
-        areas = area_for(name, drawn, volume, surface, air_area, speed)
+        areas = area_behind(name, drawn, surfaces, air)
         spread[name] = (areas.mean(axis=0), areas.std(axis=0))
     return spread

@@ -18,11 +18,9 @@ from numpy.typing import ArrayLike, NDArray
 
 from planner.air import Air, energy_attenuation, speed_of_sound
 from planner.bands import OCTAVES, exact_midband
+from planner.predict.reverberation import LARGEST_ALPHA, area_from_time
 from planner.predict.targets import TargetLimits
 from planner.room.surfaces import RoomSurfaces
-
-CAP = 0.99
-"""Largest coefficient that Eyring's formula takes. [-]"""
 
 Array = NDArray[np.float64]
 
@@ -56,53 +54,6 @@ def formulas(choice: str) -> tuple[str, ...]:
     return ("eyring", "sabine") if choice == "both" else (choice,)
 
 
-def decay_area(volume: float, times: ArrayLike, speed: float) -> Array:
-    """Absorption area including the air's that gives a reverberation time by Sabine. [m²].
-
-    24 ln 10 V / (c T); inf where T is 0, 0 where T is infinite.
-    """
-    with np.errstate(divide="ignore"):
-        area: Array = 24.0 * np.log(10.0) * volume / (speed * np.asarray(times, float))
-    return area
-
-
-def area_for(
-    formula: str,
-    times: ArrayLike,
-    volume: float,
-    surface_area: float,
-    air_area: ArrayLike,
-    speed: float,
-) -> Array:
-    """Absorption area of the surfaces that gives the reverberation times `times`.
-
-    Parameters
-    ----------
-    formula
-        ``sabine`` or ``eyring``.
-    times
-        Shape ``(..., band)``. [s]
-    volume, surface_area
-        Of the room. [m³], [m²]
-    air_area
-        4 m V, shape ``(band,)``. [m²]
-    speed
-        Of sound. [m/s]
-
-    Returns
-    -------
-    area
-        Shape of `times`; for Eyring with coefficients capped at 0.99. Negative where the air alone
-        is shorter than that. [m²]
-    """
-    needed = decay_area(volume, times, speed) - np.asarray(air_area, float)
-    if formula == "sabine":
-        return np.asarray(needed, float)
-    with np.errstate(over="ignore"):
-        area: Array = surface_area * (1.0 - np.exp(-needed / surface_area))
-    return area
-
-
 def absorption_area(surfaces: RoomSurfaces, formula: str) -> Array:
     """Absorption area as a formula counts it, shape ``(band,)``. [m²]."""
     panels: Array = surfaces.area @ counted(surfaces.alpha, formula)
@@ -113,7 +64,7 @@ def absorption_area(surfaces: RoomSurfaces, formula: str) -> Array:
 def counted(alpha: ArrayLike, formula: str) -> Array:
     """Coefficients as a formula counts them: as they are, or capped for Eyring. [-]."""
     values = np.asarray(alpha, float)
-    return np.minimum(values, CAP) if formula == "eyring" else values
+    return np.minimum(values, LARGEST_ALPHA) if formula == "eyring" else values
 
 
 def effective_volume(surfaces: RoomSurfaces) -> float:
@@ -137,15 +88,10 @@ def windows(
     names
         Formulas.
     """
-    volume = effective_volume(surfaces)
-    air_area = 4.0 * air_m(air) * volume
-    surface = float(surfaces.area.sum())
-    speed = float(speed_of_sound(air.temperature_c))
     shortest, longest = np.asarray(low, float), np.asarray(high, float)
     found = []
     for name in names:
-        least = area_for(name, longest, volume, surface, air_area, speed)
-        most = area_for(name, shortest, volume, surface, air_area, speed)
+        least, most = (area_behind(name, t, surfaces, air) for t in (longest, shortest))
         found.append(
             Windows(
                 name,
@@ -154,6 +100,18 @@ def windows(
             )
         )
     return tuple(found)
+
+
+def area_behind(formula: str, times: ArrayLike, surfaces: RoomSurfaces, air: Air) -> Array:
+    """Absorption area that gives a room of this size the times `times`, shape of `times`. [m²]."""
+    return area_from_time(
+        formula,
+        times,
+        effective_volume(surfaces),
+        float(surfaces.area.sum()),
+        air_attenuation=air_m(air),
+        speed_of_sound=speed_of_sound(air.temperature_c),
+    )
 
 
 def air_m(air: Air) -> Array:
