@@ -51,7 +51,7 @@ def check(room: RoomPath, as_json: AsJson = False) -> None:
         [
             part.name,
             part.material,
-            f"{area:.2f}",
+            show.bare_area(area),
             *(f"{a:.2f}{'*' if flag else ''}" for a, flag in zip(alpha, assumed, strict=True)),
         ]
         for part, area, alpha, assumed in zip(
@@ -61,7 +61,7 @@ def check(room: RoomPath, as_json: AsJson = False) -> None:
     labels = [band_label(hz) for hz in OCTAVES]
     say()
     table(
-        ["part", "material", "area (m²)", *labels],
+        ["part", "material", f"area ({show.area_unit})", *labels],
         rows,
         title="Absorption coefficient per octave (Hz), from tables; * assumed: no source gives it",
     )

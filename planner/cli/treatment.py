@@ -109,13 +109,13 @@ def _show(answer: Suggestion, show: Quantities, *, brief: bool = False) -> None:
     from planner.bands import OCTAVES, band_label
 
     table(
-        ["product", "surface", "pieces", "area (m²)"],
+        ["product", "surface", "pieces", f"area ({show.area_unit})"],
         [
             [
                 item.description,
                 item.surface,
                 "–" if item.count is None else f"{item.count}",
-                f"{item.area_m2:.2f}",
+                show.bare_area(item.area_m2),
             ]
             for item in answer.items
         ],

@@ -61,6 +61,15 @@ class Quantities:
             return f"{square_metres / METRES_PER['ft'] ** 2:.1f} ft²"
         return f"{square_metres:.2f} m²"
 
+    @property
+    def area_unit(self) -> str:
+        """``m²`` or ``ft²``."""
+        return "ft²" if self.imperial else "m²"
+
+    def bare_area(self, square_metres: float) -> str:
+        """An area without its unit, for a column that names it."""
+        return self.area(square_metres).removesuffix(f" {self.area_unit}")
+
     def sentence(self, text: str) -> str:
         """A finished sentence with its areas and weights in these units; they round up.
 

@@ -43,7 +43,7 @@ def option_sections(data: ReportData) -> list[Section]:
     ]
     heads = ("option", "outside at", "inside", f"cost ({currency})", "deepest", "covers",
              "125 Hz", "1 kHz")  # fmt: skip
-    unit = "ft²" if show.imperial else "m²"
+    unit = show.area_unit
     caption = (
         "Outside at: bands outside the target; inside: probability of lying inside it; deepest: thickness "
         f"and gap; 125 Hz and 1 kHz: cost of one {unit} of absorption area added there"

@@ -74,7 +74,7 @@ def _surfaces(builder: Builder, data: ReportData, show: Quantities) -> None:
         )
         for n, name in enumerate(surfaces.items)
     ]
-    unit = "ft²" if show.imperial else "m²"
+    unit = show.area_unit
     builder.table(("furnishing", "count", *band_heads()), items, right=tuple(range(1, 10)), wide=0,
                   small=True, caption=f"Absorption area of one piece ({unit})")  # fmt: skip
 
