@@ -29,23 +29,6 @@ LONGEST_NAME = 80
 MOST_KEPT = 4
 """Evaluations, with their curves, that the server remembers."""
 
-FLAGS = {
-    "bent": "two slopes: T depends on the range; look at the decay",
-    "curved": "T20 and T30 differ: T depends on the range; look at the decay",
-    "irregular": "no smooth decay: repeat with more bursts, away from noise",
-    "short-range": "less than 35 dB above the noise: play louder or find a quieter hour",
-    "few-decays": "scatters: record more bursts at more positions",
-    "limited-by-filter": "so short that the band's filter rings as long: an upper bound only",
-    "neighbour-leak": "a longer neighbouring band shines through: an upper bound only",
-    "refused": "no reverberation time can be read",
-}
-"""Doubts about a band in words, with the cure."""
-
-
-def flag_in_words(flag: str) -> str:
-    """A doubt in words; those that are words already stay."""
-    return FLAGS.get(flag, flag)
-
 
 def safe_name(name: str) -> str:
     """The name of an uploaded file without any path, and without what file systems forbid."""

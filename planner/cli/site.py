@@ -167,6 +167,7 @@ def _progress(done: int, total: int) -> None:
 def show_measured(measured: Measured) -> None:
     """Table of a measurement and everything that was found."""
     from planner.bands import band_label
+    from planner.measure.figures import doubts_in_words
 
     rows = [
         [
@@ -188,9 +189,8 @@ def show_measured(measured: Measured) -> None:
         rows,
         title="Measured reverberation time",
     )
-    for hz, flags in zip(measured.bands_hz, measured.flags, strict=True):
-        if flags:
-            say(f"{hz:g} Hz: {'; '.join(flags)}")
+    for words in doubts_in_words(measured.bands_hz, measured.flags):
+        say(words)
     if measured.grade:
         say(f"Positions and decays reach the {measured.grade} method of ISO 3382-2.")
     for note in measured.recordings:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -10,6 +11,32 @@ from numpy.typing import NDArray
 from planner.measure.filterbank import Bands
 
 Array = NDArray[np.float64]
+
+FLAGS = {
+    "bent": "two slopes: T depends on the range; look at the decay",
+    "curved": "T20 and T30 differ: T depends on the range; look at the decay",
+    "irregular": "no smooth decay: repeat with more bursts, away from noise",
+    "short-range": "less than 35 dB above the noise: play louder or find a quieter hour",
+    "few-decays": "scatters: record more bursts at more positions",
+    "limited-by-filter": "so short that the band's filter rings as long: an upper bound only",
+    "neighbour-leak": "a longer neighbouring band shines through: an upper bound only",
+    "refused": "no reverberation time can be read",
+}
+"""Doubts about a band in words, with the cure."""
+
+
+def flag_in_words(flag: str) -> str:
+    """A doubt in words; those that are words already stay."""
+    return FLAGS.get(flag, flag)
+
+
+def doubts_in_words(bands_hz: Sequence[float], flags: Sequence[Sequence[str]]) -> tuple[str, ...]:
+    """Each doubt once, with the bands it is about and its cure."""
+    bands: dict[str, list[str]] = {}
+    for hz, doubts in zip(bands_hz, flags, strict=True):
+        for doubt in doubts:
+            bands.setdefault(doubt, []).append(f"{hz:g}")
+    return tuple(f"{', '.join(at)} Hz: {flag_in_words(doubt)}." for doubt, at in bands.items())
 
 
 @dataclass(frozen=True, slots=True)

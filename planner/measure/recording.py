@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -76,8 +76,17 @@ class Recording:
 
     @property
     def warnings(self) -> tuple[str, ...]:
-        """Notes and findings together."""
-        return (*self.notes, *(str(finding) for finding in self.findings))
+        """Notes and findings together; what a note tells already, and a cure, are said once."""
+        told, rest, cured = list(self.notes), [], set[str]()
+        for finding in self.findings:
+            at = next((n for n, note in enumerate(told) if finding.what in note), None)
+            said = finding.cure in cured
+            cured.add(finding.cure)
+            if at is None:
+                rest.append(str(finding).removesuffix(f" {finding.cure}" if said else ""))
+            elif not said:
+                told[at] = f"{told[at]} {finding.cure}"
+        return (*told, *rest)
 
 
 def scan(file: SoundFile) -> Scan:
@@ -224,7 +233,7 @@ def read_recording(
                     reverse=reverse,
                 )
             )
-        findings.extend(_spectral(kept, read, file.rate, bursts, power))
+        findings.extend(_spectral(kept, stops_s, read, file.rate, bursts, power))
         return Recording(
             file=file.path.name,
             channel=channel + 1,
@@ -348,6 +357,7 @@ def _fine_stops(
 
 def _spectral(
     kept: list[BandEnergies],
+    stops_s: Sequence[float],
     read: Callable[[int, int], NDArray[np.float32]],
     rate: int,
     bursts: list[Burst],
@@ -359,7 +369,11 @@ def _spectral(
     first = kept[0]
     before = first.times < 0
     steady = BandEnergies(
-        first.energy[before], first.frame_s, first.begin_s, first.bands, first.reverse
+        first.energy[before],
+        first.frame_s,
+        first.begin_s + stops_s[0],
+        first.bands,
+        first.reverse,
     )
     findings = [tamper.thin_bands(steady)]
     last = max(bursts, key=lambda burst: burst.next_start - burst.stop)

@@ -185,7 +185,8 @@ def thin_bands(steady: BandEnergies) -> Finding | None:
     if not missing:
         return None
     return Finding(
-        f"there is {-float(below.min()):.0f} dB less than in the 1 kHz band where pink noise has as much",
+        f"the noise lies {-float(below.min()):.0f} dB under what pink noise would have, reckoned from the "
+        "1 kHz band,",
         "Switch off low-cut and 'voice' modes of the recorder, or use a larger loudspeaker.",
         steady.begin_s,
         steady.begin_s + len(steady.energy) * steady.frame_s,

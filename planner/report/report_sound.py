@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.bands import OCTAVES
+from planner.measure.figures import doubts_in_words
 from planner.report import charts
 from planner.report.acceptance import interval_text, limits_text
 from planner.report.document import Builder, Section
@@ -152,12 +153,14 @@ def measurement_sections(data: ReportData) -> list[Section]:
     ]
     builder.table(("what", "value"), [fact for fact in facts if fact[1]], wide=1)
     builder.table(
-        ("band", "T (s)", "95 % interval (s)", "evaluation", "decay range (dB)", "remarks"),
+        ("band", "T (s)", "95 % interval (s)", "evaluation", "decay range (dB)"),
         _measured_rows(measured),
         right=(1, 2, 4),
-        wide=5,
+        wide=3,
         small=True,
     )
+    if measured.flags:
+        builder.bullets(doubts_in_words(measured.bands_hz, measured.flags), "Doubts about bands")
     builder.bullets(measured.warnings, "Remarks on the recordings")
     if data.comparison is not None:
         builder.bullets(data.comparison.words, "Against the prediction")
@@ -177,7 +180,6 @@ def _measured_rows(measured: Measurement) -> list[tuple[str, ...]]:
                 interval_text(time - reach, time + reach),
                 measured.evaluation[n] if n < len(measured.evaluation) else "",
                 span,
-                "; ".join(measured.flags[n]) if n < len(measured.flags) else "",
             )
         )
     return rows

@@ -5,7 +5,7 @@ import shutil
 import pytest
 
 from planner.app import survey
-from planner.app.survey import evaluated, flag_in_words, places, safe_name, survey_text, take
+from planner.app.survey import evaluated, places, safe_name, survey_text, take
 from planner.app.work import open_work
 from planner.errors import RecordingError
 
@@ -99,8 +99,3 @@ def test_the_same_recordings_are_not_evaluated_twice(work):
     assert run("occupied") is not first
     files[0].write_bytes(files[1].read_bytes())
     assert run() is not first
-
-
-def test_doubts_are_words_with_a_cure():
-    assert "louder" in flag_in_words("short-range")
-    assert flag_in_words("refused at 2 of 6 positions") == "refused at 2 of 6 positions"

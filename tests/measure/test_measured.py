@@ -9,6 +9,7 @@ from hypothesis import strategies as st
 
 from planner.air import Air
 from planner.errors import MeasuredError
+from planner.measure.figures import doubts_in_words
 from planner.measure.measured import (
     Measured,
     measured_from_bytes,
@@ -128,3 +129,11 @@ def test_any_bytes_are_a_table_or_one_message(raw):
         measured_from_bytes(raw, "measured.csv")
     except MeasuredError as refusal:
         assert "measured.csv" in str(refusal)  # noqa: PT017 - either outcome is right
+
+
+def test_doubts_are_words_with_a_cure():
+    said = doubts_in_words((63, 125, 250), (("short-range",), ("short-range", "mains hum"), ()))
+    assert said == (
+        "63, 125 Hz: less than 35 dB above the noise: play louder or find a quieter hour.",
+        "125 Hz: mains hum.",
+    )

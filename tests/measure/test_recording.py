@@ -279,7 +279,7 @@ def tampered(kind, samples, stops):
         ("gate to zero", "digital silence"),
         ("gate drop", "drops by"),
         ("fade", "faded out"),
-        ("high-pass", "less than in the 1 kHz band"),
+        ("high-pass", "under what pink noise would have"),
         ("hum", "mains hum of 50 Hz"),
     ],
 )
@@ -290,6 +290,9 @@ def test_a_recorder_that_tampers_is_caught(tmp_path, clean, kind, message):
     recording = read_recording(path)
     assert message in words(recording)
     assert any(finding.cure for finding in recording.findings)
+    assert all(0.0 <= finding.start_s <= finding.stop_s for finding in recording.findings)
+    said = " ".join(recording.warnings)
+    assert all(said.count(finding.cure) == 1 for finding in recording.findings)
     if kind in ("high-pass", "hum"):
         spoilt = next(finding for finding in recording.findings if finding.bands_hz).bands_hz
         assert 63.0 in spoilt

@@ -15,6 +15,7 @@ from planner.app.tables import HELD, cells, edited
 from planner.app.work import SURVEY
 from planner.bands import OCTAVES
 from planner.errors import PlannerError
+from planner.measure.figures import doubts_in_words
 from planner.measure.measured import measured_to_csv
 from planner.measure.measurement import SOUND
 from planner.measure.noise import cue_sheet, lengths_for, noise_signal
@@ -267,7 +268,7 @@ def results() -> None:
     if measured.state:
         facts.append(f"room {measured.state}")
     st.caption(" · ".join(facts))
-    for words in doubts(measured):
+    for words in doubts_in_words(measured.bands_hz, measured.flags):
         st.markdown(f"- {show.plain(words)}")
     show.notes(
         [
@@ -280,15 +281,6 @@ def results() -> None:
         recall(len(measured.bands_hz))
     if work.measurement is not None:
         decays()
-
-
-def doubts(measured: Any) -> list[str]:
-    """Each doubt once, with the bands it is about and its cure."""
-    bands: dict[str, list[str]] = {}
-    for hz, flags in zip(measured.bands_hz, measured.flags, strict=True):
-        for flag in flags:
-            bands.setdefault(flag, []).append(f"{hz:g}")
-    return [f"{', '.join(at)} Hz: {survey.flag_in_words(flag)}." for flag, at in bands.items()]
 
 
 def table(measured: Any) -> Any:
