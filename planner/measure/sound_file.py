@@ -3,8 +3,11 @@
 from __future__ import annotations
 
 import io
+import os
 import struct
+import threading
 from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from types import TracebackType
 from typing import Any, Self
@@ -22,7 +25,28 @@ MOST_CHANNELS = 64
 LOSSY = ("OGG", "MP3")
 _PHONE = (".m4a", ".mp4", ".aac", ".3gp", ".amr", ".wma", ".caf", ".mov")
 
+_MUTING = threading.Lock()
+
 Frames = NDArray[np.float32]
+
+
+@contextmanager
+def _muted() -> Iterator[None]:
+    """A damaged MP3 makes the library complain past Python, straight to standard error."""
+    with _MUTING:
+        try:
+            kept = os.dup(2)
+        except OSError:  # there is no standard error
+            yield
+            return
+        sink = os.open(os.devnull, os.O_WRONLY)
+        try:
+            os.dup2(sink, 2)
+            yield
+        finally:
+            os.dup2(kept, 2)
+            os.close(kept)
+            os.close(sink)
 
 
 class SoundFile:
@@ -62,7 +86,8 @@ class SoundFile:
             )
         try:
             # By name: through a Python file object every kilobyte would cost a call.
-            file = soundfile.SoundFile(str(self.path))
+            with _muted():
+                file = soundfile.SoundFile(str(self.path))
             block = file.channels * _bytes_per_sample(file.subtype)
         except (soundfile.SoundFileError, RuntimeError, TypeError, ValueError) as error:
             raise self._unreadable() from error

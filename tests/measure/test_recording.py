@@ -380,3 +380,10 @@ def test_a_regular_signal_sharpens_its_switch_offs():
     assert regular([3.0, 7.1, 10.9]) == (3.0, 7.1, 10.9)  # switched by hand
     assert regular([3.0]) == (3.0,)
     assert regular([]) == ()
+
+
+def test_a_damaged_mp3_gets_one_message(tmp_path, capfd):
+    (tmp_path / "a.mp3").write_bytes(b"ID3\x03\x00" + bytes(2000))
+    with pytest.raises(RecordingError, match="no sound file that can be read"):
+        read_recording(tmp_path / "a.mp3")
+    assert capfd.readouterr() == ("", "")
