@@ -42,3 +42,8 @@ def test_coefficients_are_those_of_the_material_named():
     row = builtin().find("wool-100-direct")
     product = builtin_catalogue().find("panel-wool-100")
     assert product.coefficients.alpha[1:7].tolist() == list(row.alpha[1:7])
+
+
+def test_no_two_products_read_alike_on_a_list():
+    words = [product.description for product in builtin_catalogue().values()]
+    assert len(set(words)) == len(words)
