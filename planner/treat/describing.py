@@ -42,6 +42,7 @@ def describe(task: Task, found: Found) -> Suggestion:
         item_draws=task.item_draws,
     )
     inside = meets(times, task.target, task.judged)
+    likely = float(np.mean(inside.all(axis=1)))
     status = found.status
     if deviation > 0 and status is Status.OPTIMAL:
         status = Status.INFEASIBLE
@@ -58,7 +59,7 @@ def describe(task: Task, found: Found) -> Suggestion:
         target_high=np.asarray(task.target.high, float),
         judged_hz=_hz(task.judged),
         assumed_hz=room.assumed_hz,
-        probability=float(np.mean(inside.all(axis=1))),
+        probability=likely,
         band_probability=inside.mean(axis=0),
         confidence=task.confidence,
         gap=found.gap,
@@ -69,7 +70,18 @@ def describe(task: Task, found: Found) -> Suggestion:
         if deviation > 0
         else (),
         binding=binding_limits(task.problem, found.amounts),
-        warnings=_warnings(task, found, room),
+        warnings=(*_warnings(task, found, room), *_unsure(task, status, likely)),
+    )
+
+
+def _unsure(task: Task, status: Status, likely: float) -> tuple[str, ...]:
+    """Said of a list that meets the target on paper and would miss it more often than not."""
+    if task.confidence is not None or status is Status.INFEASIBLE or likely >= 0.5:
+        return ()
+    return (
+        "the list meets the target if every coefficient is as its table says; as uncertain as they "
+        f"are, the room does so with a probability of {likely:.0%} only: measure the room, or ask for "
+        "a confidence, such as 0.8, to be surer",
     )
 
 

@@ -310,3 +310,12 @@ def test_no_time_still_answers():
 def test_same_input_same_list():
     products = [panel("a", 0.8, price=30.0), panel("b", 0.7, price=25.0)]
     assert ask(products).to_json() == ask(products).to_json()
+
+
+def test_a_list_that_rests_on_exact_coefficients_says_so():
+    """The cheapest list lies just inside; half of all rooms like it would not (two-sided: fewer)."""
+    plain = ask([panel()])
+    assert plain.status == "optimal"
+    assert plain.probability < 0.5
+    assert f"probability of {plain.probability:.0%} only" in " ".join(plain.warnings)
+    assert "only: measure" not in " ".join(ask([panel()], confidence=0.6).warnings)
