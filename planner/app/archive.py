@@ -7,6 +7,7 @@ import zipfile
 from pathlib import Path, PurePosixPath
 
 from planner.errors import ProjectError
+from planner.measure.measurement import SOUND
 from planner.storage import write_atomically
 
 MOST_FILES = 500
@@ -16,10 +17,7 @@ LARGEST_ALL = 1_000_000_000
 LARGEST_RATIO = 200
 """More than this is packed to burst, not to send."""
 
-KEPT = (
-    ".toml", ".csv", ".wav", ".flac", ".aif", ".aiff", ".w64", ".caf", ".ogg", ".pdf", ".html", ".xlsx",
-    ".txt", ".svg", ".dxf",
-)  # fmt: skip
+KEPT = (*SOUND, ".toml", ".csv", ".pdf", ".html", ".xlsx", ".txt", ".svg", ".dxf")
 """Endings that belong to a project."""
 
 
@@ -34,7 +32,10 @@ def packed(folder: Path, *, recordings: bool = True) -> bytes:
                 continue
             if sound and not recordings:
                 continue
-            archive.write(path, place.as_posix())
+            # Sound hardly packs, and silence packs so well that it would be taken for a bomb.
+            archive.write(
+                path, place.as_posix(), zipfile.ZIP_STORED if sound else zipfile.ZIP_DEFLATED
+            )
     return buffer.getvalue()
 
 

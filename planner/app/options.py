@@ -14,7 +14,7 @@ from planner.app import cached, show
 from planner.app.tables import edited, option_of, option_rows
 from planner.app.work import Work
 from planner.bands import OCTAVES
-from planner.errors import PlannerError
+from planner.errors import OptionError, PlannerError
 from planner.report import charts
 from planner.report.drawings import on_screen
 from planner.report.quantities import Quantities
@@ -52,6 +52,10 @@ def suggest(work: Work) -> None:
     if st.button("Suggest the cheapest treatment", type="primary", key="suggest"):
         with st.spinner("Looking for the cheapest list …"):
             try:
+                if name.strip() in work.options:
+                    raise OptionError(
+                        f"there is an option {name.strip()!r} already", cure="Choose another name."
+                    )
                 found, placement = work.project.suggest(
                     work.calibrating,
                     confidence=None if sure.startswith("as") else float(sure[:2]) / 100,
@@ -60,12 +64,15 @@ def suggest(work: Work) -> None:
                 work.suggestion = found
                 note = f"{SUGGESTED}{proof(found)}"[:2000]
                 work.set_option(found.option.model_copy(update={"note": note}))
-                work.answer = _in_words(found, placement.warnings, Quantities(work.room.units))
+                words = _in_words(found, placement.warnings, Quantities(work.room.units))
+                work.answer = {"option": found.option.name, "of": work.basis, **words}
                 st.session_state["edited"] = st.session_state.get("edited", 0) + 1
             except PlannerError as error:
                 show.refusal(error)
                 return
-    if work.answer:
+    about = work.options.get(work.answer.get("option", ""))
+    untouched = about is not None and about.note.startswith(SUGGESTED)
+    if untouched and work.answer["of"] == work.basis:
         _answer(work.answer)
 
 
@@ -108,7 +115,8 @@ def _in_words(answer: Suggestion, placing: Sequence[str], units: Quantities) -> 
 
 def _answer(words: Mapping[str, Any]) -> None:
     """Show what was answered last."""
-    (st.success if words["met"] else st.error)(words["proof"])
+    name = show.plain(words["option"])
+    (st.success if words["met"] else st.error)(f"{name}: {words['proof']}")
     st.markdown(words["sure"])
     if words["lines"]:
         st.markdown(words["lines"])

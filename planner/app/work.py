@@ -49,7 +49,15 @@ SURVEY = "recordings/survey.csv"
 ASKED: dict[str, type] = {"files": list, "impulse": bool, "thirds": bool, "state": str}
 """What is kept of an evaluation of recordings."""
 
-ANSWERED: dict[str, type] = {"met": bool, "proof": str, "sure": str, "lines": str, "doubts": list}
+ANSWERED: dict[str, type] = {
+    "option": str,
+    "of": str,
+    "met": bool,
+    "proof": str,
+    "sure": str,
+    "lines": str,
+    "doubts": list,
+}
 """What is kept of a suggestion beside its option."""
 
 LOOKED_AT = "looked-at.toml"
@@ -118,6 +126,17 @@ class Work:
         return self.measured if self.use_measured else None
 
     @property
+    def basis(self) -> str:
+        """Tells apart what a suggestion rests on: room, measurement and products."""
+        catalogue = self.folder / "catalogue.csv"
+        parts = (
+            room_to_toml(self.room),
+            measured_to_csv(self.calibrating) if self.calibrating else "",
+            _digest(catalogue) if catalogue.is_file() else "",
+        )
+        return hashlib.sha256("\0".join(parts).encode()).hexdigest()[:16]
+
+    @property
     def conflict(self) -> str | None:
         """Name of a file that someone else changed meanwhile."""
         return next(iter(self.unsaved), None)
@@ -162,6 +181,12 @@ class Work:
             and len(self.options) >= MOST_OPTIONS
         ):
             raise OptionError(f"{MOST_OPTIONS} options are kept already", cure="Delete one first.")
+        for other in self.options:
+            if other not in (option.name, replacing) and file_name(other) == file_name(option.name):
+                raise OptionError(
+                    f"{option.name!r} and {other!r} would be kept in one file",
+                    cure="Choose a name that differs in more than signs and capitals.",
+                )
         if replacing and replacing != option.name:
             self.remove_option(replacing)
         self.options[option.name] = option
@@ -203,7 +228,6 @@ class Work:
                 "chosen": self.chosen or "",
                 "evaluated": self.evaluated,
                 "answer": self.answer,
-                "of": _described(self) if self.answer else "",
             }
         )
         if text != self.remembered:
@@ -318,18 +342,13 @@ def _recall(work: Work) -> None:
     if _kinds(known.get("evaluated")) == ASKED:
         asked = known["evaluated"]
         work.evaluated = {**asked, "files": [str(name) for name in asked["files"]]}
-    if _kinds(known.get("answer")) == ANSWERED and known.get("of") == _described(work):
+    if _kinds(known.get("answer")) == ANSWERED:
         answer = known["answer"]
         work.answer = {**answer, "doubts": [str(doubt) for doubt in answer["doubts"]]}
 
 
 def _kinds(table: Any) -> dict[str, type]:
     return {n: type(value) for n, value in table.items()} if isinstance(table, dict) else {}
-
-
-def _described(work: Work) -> str:
-    """Tells whether the room is still the one that an answer was about."""
-    return hashlib.sha256(room_to_toml(work.room).encode()).hexdigest()[:16]
 
 
 def new_work(folder: Path, serial: int = 0) -> Work:

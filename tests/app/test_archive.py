@@ -8,6 +8,7 @@ import pytest
 
 from planner.app.archive import packed, unpack
 from planner.errors import ProjectError
+from planner.measure.measurement import SOUND
 
 
 def archive(entries):
@@ -80,3 +81,15 @@ def test_a_damaged_archive(tmp_path):
     content[45] ^= 0xFF
     with pytest.raises(ProjectError):
         unpack(bytes(content), tmp_path)
+
+
+def test_every_kind_of_recording_and_silence_come_out_again(tmp_path):
+    """Whatever may be uploaded is part of the project; zeros pack a thousandfold and are no bomb."""
+    folder = tmp_path / "mine"
+    (folder / "recordings").mkdir(parents=True)
+    (folder / "room.toml").write_text("name = 'x'", encoding="utf-8")
+    for ending in SOUND:
+        (folder / "recordings" / f"a{ending}").write_bytes(bytes(2_000_000))
+    unpack(packed(folder), tmp_path / "again")
+    found = {path.suffix for path in (tmp_path / "again" / "recordings").iterdir()}
+    assert found == set(SOUND)

@@ -198,3 +198,20 @@ def test_a_change_can_be_looked_at_before_it_is_written(work):
     assert "height = 2.6" in (work.folder / "room.toml").read_text(encoding="utf-8")
     work.write_room()
     assert "height = 2.8" in (work.folder / "room.toml").read_text(encoding="utf-8")
+
+
+def test_no_option_takes_the_file_of_another(work):
+    """Names that differ in capitals or signs only would end up in one file."""
+    first = work.options["first"]
+    text = (work.folder / "options" / "first.toml").read_text(encoding="utf-8")
+    with pytest.raises(OptionError, match="one file"):
+        work.set_option(first.model_copy(update={"name": "First!"}))
+    assert (work.folder / "options" / "first.toml").read_text(encoding="utf-8") == text
+    work.set_option(first.model_copy(update={"name": "First"}), replacing="first")
+    assert list(work.options) == ["First"]
+
+
+def test_what_a_suggestion_rests_on_changes_with_the_measurement(work):
+    before = work.basis
+    work.use_measured = True
+    assert work.basis != before
